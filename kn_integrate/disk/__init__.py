@@ -1,0 +1,1 @@
+"""The quadrature engine: sectors, rules, planning and evaluation of disk integrals."""

@@ -1,0 +1,290 @@
+r"""Exact decomposition of the disk integral into sectors with endpoint powers only.
+
+Geometry
+--------
+Punctures 1..n in canonical order, ``z_1 = 0``, ``z_{n-1} = 1``, ``z_n = infinity``.  The integral lives on the
+``m = n - 2`` gaps ``g_0..g_{m-1}`` between neighbouring finite punctures; ``z_b - z_a`` is the sum of a *run* of
+consecutive gaps, and because the exponents of all runs add up to ``-m`` the integrand is projective: any one gap
+may be put to 1 instead of their sum.
+
+Cut the space of gaps by the question which gap is the largest; then ask the same to the left and to the right of
+it, and so on.  The answer is a binary tree on the gaps whose in-order sequence is ``0..m-1`` (a Cartesian tree), so
+there are Catalan(n-2) sectors, one for each vertex of the associahedron.  In a sector put the root gap to 1 and
+
+    ``g_v = t_v g_parent(v)``,   ``0 <= t_v <= 1``.
+
+Then the integrand becomes ``prod_v t_v^(Y_v - 1)`` times ``prod_runs P_run^A_run`` with
+
+    ``P_run = (sum of the run) / (largest gap of the run) = 1 + a polynomial with coefficients 0 or 1``,
+
+multilinear in the ``t_v``, at least 1 on the cube.  ``Y_v`` is the exponent of the boundary divisor of the chord
+whose cluster is the subtree of v.  All singularities are endpoint powers; that is the whole point.
+
+Evaluation plan
+---------------
+Per sector two variables are chosen as the *inner pair* so that as few runs as possible depend on both; every
+``P_run`` is ``alpha + beta t_i + gamma t_j + delta t_i t_j`` with coefficients that depend on the other (outer)
+variables through a few monomials.  :class:`SectorTable` holds this as integer arrays, which is all that the kernels
+see.  Tables depend on n alone and are kept.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import lru_cache
+from itertools import combinations
+
+import numpy as np
+from numpy.typing import NDArray
+
+Run = tuple[int, int]
+
+CONST, I_ONLY, J_ONLY, BOTH = 0, 1, 2, 3
+
+
+def runs_of(m: int) -> tuple[Run, ...]:
+    """All runs ``(a, b)`` of consecutive gaps, ``0 <= a <= b < m``, by length and then by position.
+
+    The full run stands last.  A run shorter than the full one is a chord of the n-gon: the one whose cluster is
+    the punctures ``a+1 .. b+2``.
+
+    >>> runs_of(3)
+    ((0, 0), (1, 1), (2, 2), (0, 1), (1, 2), (0, 2))
+    """
+    return tuple((a, a + length) for length in range(m) for a in range(m - length))
+
+
+@dataclass(frozen=True)
+class Tree:
+    """A Cartesian tree on gaps ``0..m-1``: the parent of each gap (-1 for the root) and the run of its subtree."""
+
+    parent: tuple[int, ...]
+    subtree: tuple[Run, ...]
+
+    @property
+    def root(self) -> int:
+        """The largest gap of the sector."""
+        return self.parent.index(-1)
+
+    def lca(self, run: Run) -> int:
+        """The largest gap of a run: its member nearest to the root."""
+        a, b = run
+        return min(range(a, b + 1), key=self.depth)
+
+    def depth(self, v: int) -> int:
+        """Number of steps to the root."""
+        steps = 0
+        while self.parent[v] >= 0:
+            v = self.parent[v]
+            steps += 1
+        return steps
+
+    def path(self, v: int, ancestor: int) -> tuple[int, ...]:
+        """The gaps from v up to, not including, an ancestor: ``g_v = g_ancestor * prod t_u`` over them."""
+        steps = []
+        while v != ancestor:
+            steps.append(v)
+            v = self.parent[v]
+        return tuple(steps)
+
+
+@lru_cache(maxsize=None)
+def trees(m: int) -> tuple[Tree, ...]:
+    """All Cartesian trees on m gaps, in a fixed order; Catalan(m) of them.
+
+    >>> [len(trees(m)) for m in (2, 3, 4, 5, 6, 7)]
+    [2, 5, 14, 42, 132, 429]
+    """
+
+    @lru_cache(maxsize=None)
+    def build(a: int, b: int) -> tuple[tuple[tuple[int, int], ...], ...]:
+        # every tree on gaps a..b, as pairs (gap, parent or -1)
+        if a > b:
+            return ((),)
+        found = []
+        for root in range(a, b + 1):
+            for left in build(a, root - 1):
+                for right in build(root + 1, b):
+                    nodes = [(root, -1)]
+                    nodes += [(v, root if p < 0 else p) for v, p in (*left, *right)]
+                    found.append(tuple(nodes))
+        return tuple(found)
+
+    result = []
+    for nodes in build(0, m - 1):
+        parent = [0] * m
+        for v, p in nodes:
+            parent[v] = p
+        low, high = list(range(m)), list(range(m))
+        for v in range(m):
+            u = v
+            while parent[u] >= 0:
+                u = parent[u]
+                low[u], high[u] = min(low[u], v), max(high[u], v)
+        result.append(Tree(tuple(parent), tuple(zip(low, high, strict=True))))
+    return tuple(result)
+
+
+@dataclass(frozen=True)
+class SectorTable:
+    """Every sector of one n as padded integer arrays, S sectors.
+
+    Attributes
+    ----------
+    n, m, runs
+        Number of punctures, of gaps, and the runs in the order of :func:`runs_of`.
+    variables : (S, n-3) int32
+        The chord (run index) of each variable; outer ones first, then the inner pair i, j.
+    masks_prev, masks_var : (S, K) int32
+        Monomials of the outer variables: entry k is entry ``masks_prev[k]`` times outer variable ``masks_var[k]``;
+        entry 0 is 1.
+    mask_count : (S,) int32
+    run_index : (S, R) int32
+        The runs of at least two gaps, sorted by how they depend on the inner pair.
+    run_bounds : (S, 5) int32
+        Where the four kinds (constant, i only, j only, both) start and the last ends in ``run_index``.
+    term_start : (S, R + 1) int32
+    term_mask, term_class : (S, T) int32
+        The terms of each run: which monomial, times 1, t_i, t_j or t_i t_j (class 0..3).
+    """
+
+    n: int
+    m: int
+    runs: tuple[Run, ...]
+    trees: tuple[Tree, ...]
+    variables: NDArray[np.int32]
+    masks_prev: NDArray[np.int32]
+    masks_var: NDArray[np.int32]
+    mask_count: NDArray[np.int32]
+    run_index: NDArray[np.int32]
+    run_bounds: NDArray[np.int32]
+    term_start: NDArray[np.int32]
+    term_mask: NDArray[np.int32]
+    term_class: NDArray[np.int32]
+
+    @property
+    def count(self) -> int:
+        """Number of sectors."""
+        return len(self.trees)
+
+    @property
+    def chord_count(self) -> int:
+        """n(n-3)/2: the runs shorter than the full one."""
+        return len(self.runs) - 1
+
+    def sizes(self) -> NDArray[np.int64]:
+        """The number of gaps in the cluster of each chord."""
+        return np.array([b - a + 1 for a, b in self.runs[:-1]], dtype=np.int64)
+
+
+def _run_terms(tree: Tree, run: Run) -> list[tuple[int, ...]]:
+    top = tree.lca(run)
+    return [tree.path(v, top) for v in range(run[0], run[1] + 1)]
+
+
+def _choose_pair(m: int, tree: Tree, terms: dict[Run, list[tuple[int, ...]]]) -> tuple[int, ...]:
+    """The inner pair (one variable when there is only one): fewest runs depending on both, then on either."""
+    variables = [v for v in range(m) if tree.parent[v] >= 0]
+    if len(variables) == 1:
+        return (variables[0],)
+
+    def cost(pair: tuple[int, ...]) -> tuple[int, int]:
+        i, j = pair
+        on_i = {run for run, paths in terms.items() if any(i in path for path in paths)}
+        on_j = {run for run, paths in terms.items() if any(j in path for path in paths)}
+        return (len(on_i & on_j), len(on_i | on_j))
+
+    return min(combinations(variables, 2), key=cost)
+
+
+@lru_cache(maxsize=None)
+def sector_table(n: int) -> SectorTable:
+    """The table of all sectors for n punctures (n >= 4), built once per n.
+
+    >>> table = sector_table(6)
+    >>> table.count, table.chord_count
+    (14, 9)
+    """
+    m = n - 2
+    runs = runs_of(m)
+    index = {run: k for k, run in enumerate(runs)}
+    long_runs = [run for run in runs if run[1] > run[0]]
+    all_trees = trees(m)
+    rows: list[dict[str, list[int]]] = []
+    for tree in all_trees:
+        terms = {run: _run_terms(tree, run) for run in long_runs}
+        pair = _choose_pair(m, tree, terms)
+        i = pair[0]
+        j = pair[1] if len(pair) == 2 else -1
+        outer = [v for v in range(m) if tree.parent[v] >= 0 and v not in pair]
+        slot = {v: k for k, v in enumerate(outer)}
+
+        masks: dict[frozenset[int], int] = {frozenset(): 0}
+        prev, var = [0], [0]
+
+        def mask_of(path: tuple[int, ...], masks=masks, prev=prev, var=var, slot=slot) -> int:  # type: ignore[no-untyped-def]
+            members = frozenset(slot[v] for v in path if v in slot)
+            if members not in masks:
+                # the path without its lowest gap belongs to the parent; build it first
+                head = next(v for v in path if v in slot)
+                rest = tuple(v for v in path if v != head)
+                base = mask_of(rest)
+                masks[members] = len(prev)
+                prev.append(base)
+                var.append(slot[head])
+            return masks[members]
+
+        kinds: list[list[tuple[int, list[tuple[int, int]]]]] = [[], [], [], []]
+        for run, paths in terms.items():
+            encoded = [(mask_of(path), (1 if i in path else 0) + (2 if j in path else 0)) for path in paths]
+            classes = {c for _, c in encoded}
+            on_i, on_j = bool(classes & {1, 3}), bool(classes & {2, 3})
+            kind = (BOTH if on_i else J_ONLY) if on_j else (I_ONLY if on_i else CONST)
+            kinds[kind].append((index[run], encoded))
+        bounds, start, term_mask, term_class, run_index = [0], [0], [], [], []
+        for kind in kinds:
+            for position, encoded in kind:
+                run_index.append(position)
+                term_mask += [mask for mask, _ in encoded]
+                term_class += [c for _, c in encoded]
+                start.append(len(term_mask))
+            bounds.append(len(run_index))
+        chords = [index[tree.subtree[v]] for v in (*outer, *pair)]
+        rows.append(
+            dict(
+                variables=chords,
+                masks_prev=prev,
+                masks_var=var,
+                run_index=run_index,
+                run_bounds=bounds,
+                term_start=start,
+                term_mask=term_mask,
+                term_class=term_class,
+            )
+        )
+
+    def packed(name: str) -> NDArray[np.int32]:
+        width = max(1, max(len(row[name]) for row in rows))
+        array = np.zeros((len(rows), width), dtype=np.int32)
+        for s, row in enumerate(rows):
+            array[s, : len(row[name])] = row[name]
+        array.setflags(write=False)
+        return array
+
+    counts = np.array([len(row["masks_prev"]) for row in rows], dtype=np.int32)
+    counts.setflags(write=False)
+    return SectorTable(
+        n=n,
+        m=m,
+        runs=runs,
+        trees=all_trees,
+        variables=packed("variables"),
+        masks_prev=packed("masks_prev"),
+        masks_var=packed("masks_var"),
+        mask_count=counts,
+        run_index=packed("run_index"),
+        run_bounds=packed("run_bounds"),
+        term_start=packed("term_start"),
+        term_mask=packed("term_mask"),
+        term_class=packed("term_class"),
+    )
