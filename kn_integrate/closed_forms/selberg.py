@@ -7,7 +7,7 @@ from itertools import combinations
 from math import comb, factorial
 
 from ..errors import InputError
-from ..exact import Exact, read, read_integer
+from ..exact import ONE, Exact, read, read_integer
 from .form import ClosedForm, DiskForm
 from .gammas import gamma_quotient
 from .pairs import PairExponents
@@ -118,7 +118,7 @@ class AomotoInsertion(ClosedForm):
 
     def evaluate(self, ctx: Context) -> Big:
         """The Selberg value times Aomoto's factors, which are exact rationals."""
-        factor = Exact(self.gamma.re * 0 + comb(self.count, self.k))
+        factor = comb(self.count, self.k) * ONE
         for j in range(1, self.k + 1):
             above = self.alpha + (self.count - j) * self.gamma
             below = self.alpha + self.beta + (2 * self.count - j - 1) * self.gamma
