@@ -1,0 +1,69 @@
+"""String tree integrals on the disk and the sphere, for any number of points and any kinematics.
+
+Everything public is importable from here.  Names are loaded on first use, so that importing the package (and asking
+the command line for help) loads no numerical library.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+__version__ = "0.1.0"
+
+# The home of every public name.  A new name goes here, into the imports below (for type checkers, which do not run
+# `__getattr__`) and into `__all__`; tests/unit/test_public_names.py holds the three together.
+_HOMES: dict[str, tuple[str, ...]] = {
+    "errors": ("InputError", "KNError", "NotAvailableError", "PoleError", "Status", "WorkLimitError"),
+    "estimate": ("Estimate",),
+    "kinematics": ("Mandelstams", "random_momenta"),
+    "integrand": ("Integrand", "monomial", "parke_taylor", "parse_integrand"),
+    "exponents": ("DiskExponents", "SphereExponents"),
+    "integrals": ("DiskIntegral", "SphereIntegral"),
+    "api": ("disk_integral",),
+}
+_MODULE_OF = {name: module for module, names in _HOMES.items() for name in names}
+
+if TYPE_CHECKING:
+    from .api import disk_integral
+    from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
+    from .estimate import Estimate
+    from .exponents import DiskExponents, SphereExponents
+    from .integrals import DiskIntegral, SphereIntegral
+    from .integrand import Integrand, monomial, parke_taylor, parse_integrand
+    from .kinematics import Mandelstams, random_momenta
+
+__all__ = [
+    "DiskExponents",
+    "DiskIntegral",
+    "Estimate",
+    "InputError",
+    "Integrand",
+    "KNError",
+    "Mandelstams",
+    "NotAvailableError",
+    "PoleError",
+    "SphereExponents",
+    "SphereIntegral",
+    "Status",
+    "WorkLimitError",
+    "__version__",
+    "disk_integral",
+    "monomial",
+    "parke_taylor",
+    "parse_integrand",
+    "random_momenta",
+]
+
+
+def __getattr__(name: str) -> Any:
+    module = _MODULE_OF.get(name)
+    if module is None:
+        raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+    value = getattr(import_module(f".{module}", __name__), name)
+    globals()[name] = value  # the next look-up does not come here
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted({*globals(), *__all__})
