@@ -22,18 +22,16 @@ _JIT: Any = dict(cache=True, nogil=True, error_model="numpy", fastmath={"contrac
 
 
 @njit(**_JIT)
-def _add_log(lanes, a_re, a_im, p_re, p_im, x_re, x_im):
-    """``x += a log p`` over the first lanes; returns the least real part of p."""
-    least = np.inf
+def _add_log(lanes, a_re, a_im, p_re, p_im, x_re, x_im, low):
+    """``x += a log p`` over the first lanes; ``low`` keeps the least real part of p met in each lane."""
     for k in range(lanes):
         u = p_re[k]
         v = p_im[k]
-        least = min(least, u)
+        low[k] = min(low[k], u)
         l_re = 0.5 * log(u * u + v * v)
         l_im = atan_quotient(v, u)
         x_re[k] += a_re * l_re - a_im * l_im
         x_im[k] += a_re * l_im + a_im * l_re
-    return least
 
 
 @njit(**_JIT)
@@ -54,25 +52,23 @@ def integrate_chunks(
     counts,
     nodes,
     weights,
-    nulls,
-    out_sum,
     out_abs,
-    out_null,
+    out_square,
+    out_marginal,
     out_least,
 ):
     """Integrate chunks ``first..last-1``; parameters as in the real kernel.
 
-    ``exponents``, ``nodes``, ``weights``, ``nulls``, ``out_sum`` and ``out_null`` are complex; ``out_least`` : (C,)
-    receives the least real part of any run.
+    ``exponents``, ``nodes``, ``weights`` and ``out_marginal`` are complex; ``out_least`` : (C,) receives the least real
+    part of any run.
     """
     variable_count = variables.shape[1]
-    null_count = nulls.shape[1]
     pair = min(2, variable_count)
     outer = variable_count - pair
     width = nodes.shape[1]
     runs_max = run_index.shape[1]
     masks_max = masks_prev.shape[1]
-    area = width * width
+    area = max(width * width, BLOCK)
 
     digits = np.empty((outer + 1, BLOCK), dtype=np.int64)
     t_re = np.empty((outer + 1, BLOCK))
@@ -87,6 +83,7 @@ def integrate_chunks(
     fi_im = np.empty(area)
     fj_re = np.empty(area)
     fj_im = np.empty(area)
+    low = np.empty(area)
     p_re = np.empty(area)
     p_im = np.empty(area)
     ti_re = np.empty(width)
@@ -96,7 +93,6 @@ def integrate_chunks(
     g_re = np.empty(area)
     g_im = np.empty(area)
     size_g = np.empty(area)
-    row_sum = np.empty(width, dtype=np.complex128)
     col_re = np.empty(width)
     col_im = np.empty(width)
     wj_re = np.empty(width)
@@ -137,10 +133,12 @@ def integrate_chunks(
         b3 = run_bounds[s, 3]
         b4 = run_bounds[s, 4]
 
-        total = 0.0 + 0.0j
         total_abs = 0.0
-        total_null = np.zeros((variable_count, null_count), dtype=np.complex128)
-        least = np.inf
+        total_square = 0.0
+        marginal = out_marginal[c]
+        marginal[:, :] = 0.0
+        for k in range(area):
+            low[k] = np.inf
 
         start = lo
         while start < hi:
@@ -183,7 +181,7 @@ def integrate_chunks(
                         coef_re[r, z, b] += mono_re[k, b]
                         coef_im[r, z, b] += mono_im[k, b]
                 if r < b1:
-                    least = min(least, _add_log(BLOCK, a.real, a.imag, coef_re[r, 0], coef_im[r, 0], base_re, base_im))
+                    _add_log(BLOCK, a.real, a.imag, coef_re[r, 0], coef_im[r, 0], base_re, base_im, low)
 
             for b in range(size):
                 for p in range(ni):
@@ -205,7 +203,7 @@ def integrate_chunks(
                         y = fi_im[p * nj]
                         p_re[p] = c0r + c1r * x - c1i * y
                         p_im[p] = c0i + c1r * y + c1i * x
-                    least = min(least, _add_log(ni, a.real, a.imag, p_re, p_im, ti_re, ti_im))
+                    _add_log(ni, a.real, a.imag, p_re, p_im, ti_re, ti_im, low)
                 for r in range(b2, b3):
                     a = exponents[run_index[s, r]]
                     if a == 0.0:
@@ -219,7 +217,7 @@ def integrate_chunks(
                         y = fj_im[q]
                         p_re[q] = c0r + c2r * x - c2i * y
                         p_im[q] = c0i + c2r * y + c2i * x
-                    least = min(least, _add_log(nj, a.real, a.imag, p_re, p_im, tj_re, tj_im))
+                    _add_log(nj, a.real, a.imag, p_re, p_im, tj_re, tj_im, low)
                 for p in range(ni):
                     for q in range(nj):
                         g_re[p * nj + q] = ti_re[p] + tj_re[q]
@@ -245,7 +243,7 @@ def integrate_chunks(
                         w = fj_im[k]
                         p_re[k] = c0r + c1r * x - c1i * y + ar * v - ai * w
                         p_im[k] = c0i + c1r * y + c1i * x + ar * w + ai * v
-                    least = min(least, _add_log(nij, a.real, a.imag, p_re, p_im, g_re, g_im))
+                    _add_log(nij, a.real, a.imag, p_re, p_im, g_re, g_im, low)
                 for k in range(nij):
                     m = exp(g_re[k])
                     sine, cosine = sincos(g_im[k])
@@ -253,58 +251,56 @@ def integrate_chunks(
                     g_re[k] = m * cosine
                     g_im[k] = m * sine
 
+                weight = 1.0 + 0.0j
+                for u in range(outer):
+                    weight *= weights[variables[s, u], digits[u, b]]
                 for q in range(nj):
                     col_re[q] = 0.0
                     col_im[q] = 0.0
                 inner = 0.0 + 0.0j
                 inner_abs = 0.0
+                inner_square = 0.0
                 for p in range(ni):
                     ur = wi[p].real
                     ui = wi[p].imag
                     acc_re = 0.0
                     acc_im = 0.0
                     acc_abs = 0.0
+                    acc_square = 0.0
                     for q in range(nj):
                         k = p * nj + q
                         x = g_re[k]
                         y = g_im[k]
                         acc_re += wj_re[q] * x - wj_im[q] * y
                         acc_im += wj_re[q] * y + wj_im[q] * x
-                        acc_abs += wj_abs[q] * size_g[k]
+                        m = wj_abs[q] * size_g[k]
+                        acc_abs += m
+                        acc_square += m * m
                         col_re[q] += ur * x - ui * y
                         col_im[q] += ur * y + ui * x
-                    row_sum[p] = complex(acc_re, acc_im)
-                    inner += wi[p] * row_sum[p]
-                    inner_abs += abs(wi[p]) * acc_abs
-
-                weight = 1.0 + 0.0j
+                    row = complex(acc_re, acc_im)
+                    marginal[outer, p] += weight * row
+                    inner += wi[p] * row
+                    m = abs(wi[p])
+                    inner_abs += m * acc_abs
+                    inner_square += m * m * acc_square
+                if pair == 2:
+                    for q in range(nj):
+                        marginal[outer + 1, q] += weight * complex(col_re[q], col_im[q])
+                m = abs(weight)
+                total_abs += m * inner_abs
+                total_square += m * m * inner_square
                 for u in range(outer):
-                    weight *= weights[variables[s, u], digits[u, b]]
-                total += weight * inner
-                total_abs += abs(weight) * inner_abs
-                for z in range(null_count):
-                    acc = 0.0 + 0.0j
-                    for p in range(ni):
-                        acc += nulls[chord_i, z, p] * row_sum[p]
-                    total_null[outer, z] += weight * acc
-                    if pair == 2:
-                        acc = 0.0 + 0.0j
-                        for q in range(nj):
-                            acc += nulls[chord_j, z, q] * complex(col_re[q], col_im[q])
-                        total_null[outer + 1, z] += weight * acc
-                    for u in range(outer):
-                        product = inner
-                        for u2 in range(outer):
-                            if u2 == u:
-                                product *= nulls[variables[s, u], z, digits[u, b]]
-                            else:
-                                product *= weights[variables[s, u2], digits[u2, b]]
-                        total_null[u, z] += product
+                    product = inner
+                    for u2 in range(outer):
+                        if u2 != u:
+                            product *= weights[variables[s, u2], digits[u2, b]]
+                    marginal[u, digits[u, b]] += product
             start += size
 
-        out_sum[c] = total
         out_abs[c] = total_abs
+        out_square[c] = total_square
+        least = np.inf
+        for k in range(area):
+            least = min(least, low[k])
         out_least[c] = least
-        for v in range(variable_count):
-            for z in range(null_count):
-                out_null[c, v, z] = total_null[v, z]

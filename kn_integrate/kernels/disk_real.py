@@ -36,10 +36,9 @@ def integrate_chunks(
     counts,
     nodes,
     weights,
-    nulls,
-    out_sum,
     out_abs,
-    out_null,
+    out_square,
+    out_marginal,
 ):
     """Integrate chunks ``first..last-1``.
 
@@ -51,15 +50,15 @@ def integrate_chunks(
         The sector table, see ``disk.sectors``.
     exponents : (runs,) float64
         The exponent of every run.
-    counts : (chords,) int64; nodes, weights : (chords, W) float64; nulls : (chords, Z, W) float64
-        The rule of every chord in the variable t; ``nulls`` are further functionals on the same nodes.
-    out_sum, out_abs : (C,) float64
-        Sum of weight x integrand, and of its modulus.
-    out_null : (C, V, Z) float64
-        The sum with the weights of variable v replaced by its z-th null functional; v in the order of ``variables``.
+    counts : (rules,) int64; nodes, weights : (rules, W) float64
+        The rules in the variable t; ``variables`` holds row numbers of them.
+    out_abs, out_square : (C,) float64
+        Sum of the moduli and of the squares of weight x integrand.
+    out_marginal : (C, V, W) float64
+        For variable v and its node j: the sum over all other variables of weights x integrand.  Any functional on the
+        nodes of one variable, the rule itself included, is a combination of these.
     """
     variable_count = variables.shape[1]
-    null_count = nulls.shape[1]
     pair = min(2, variable_count)
     outer = variable_count - pair
     width = nodes.shape[1]
@@ -76,7 +75,6 @@ def integrate_chunks(
     table_i = np.empty(width)
     table_j = np.empty(width)
     grid = np.empty(width * width)
-    row_sum = np.empty(width)
     col_sum = np.empty(width)
 
     for c in range(first, last):
@@ -108,9 +106,10 @@ def integrate_chunks(
         b3 = run_bounds[s, 3]
         b4 = run_bounds[s, 4]
 
-        total = 0.0
         total_abs = 0.0
-        total_null = np.zeros((variable_count, null_count))
+        total_square = 0.0
+        marginal = out_marginal[c]
+        marginal[:, :] = 0.0
 
         start = lo
         while start < hi:
@@ -188,50 +187,41 @@ def integrate_chunks(
                 for k in range(nij):
                     grid[k] = exp(grid[k])
 
+                weight = 1.0
+                for u in range(outer):
+                    weight *= weights[variables[s, u], digits[u, b]]
                 for q in range(nj):
                     col_sum[q] = 0.0
                 inner = 0.0
                 inner_abs = 0.0
+                inner_square = 0.0
                 for p in range(ni):
                     w = wi[p]
                     acc = 0.0
                     acc_abs = 0.0
+                    acc_square = 0.0
                     for q in range(nj):
-                        g = grid[p * nj + q]
-                        acc += wj[q] * g
-                        acc_abs += abs(wj[q]) * g
-                        col_sum[q] += w * g
-                    row_sum[p] = acc
+                        term = wj[q] * grid[p * nj + q]
+                        acc += term
+                        acc_abs += abs(term)
+                        acc_square += term * term
+                        col_sum[q] += w * grid[p * nj + q]
+                    marginal[outer, p] += weight * acc
                     inner += w * acc
                     inner_abs += abs(w) * acc_abs
-
-                weight = 1.0
-                for u in range(outer):
-                    weight *= weights[variables[s, u], digits[u, b]]
-                total += weight * inner
+                    inner_square += w * w * acc_square
+                if pair == 2:
+                    for q in range(nj):
+                        marginal[outer + 1, q] += weight * col_sum[q]
                 total_abs += abs(weight) * inner_abs
-                for z in range(null_count):
-                    acc = 0.0
-                    for p in range(ni):
-                        acc += nulls[chord_i, z, p] * row_sum[p]
-                    total_null[outer, z] += weight * acc
-                    if pair == 2:
-                        acc = 0.0
-                        for q in range(nj):
-                            acc += nulls[chord_j, z, q] * col_sum[q]
-                        total_null[outer + 1, z] += weight * acc
-                    for u in range(outer):
-                        product = inner
-                        for u2 in range(outer):
-                            if u2 == u:
-                                product *= nulls[variables[s, u], z, digits[u, b]]
-                            else:
-                                product *= weights[variables[s, u2], digits[u2, b]]
-                        total_null[u, z] += product
+                total_square += weight * weight * inner_square
+                for u in range(outer):
+                    product = inner
+                    for u2 in range(outer):
+                        if u2 != u:
+                            product *= weights[variables[s, u2], digits[u2, b]]
+                    marginal[u, digits[u, b]] += product
             start += size
 
-        out_sum[c] = total
         out_abs[c] = total_abs
-        for v in range(variable_count):
-            for z in range(null_count):
-                out_null[c, v, z] = total_null[v, z]
+        out_square[c] = total_square

@@ -1,0 +1,69 @@
+"""From exponents of pairs to what a sector needs: exponents of runs, and the exact divisor exponent of every chord."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..exact import Exact
+from .rules.base import PoleDistance
+from .sectors import Run, runs_of
+
+
+@dataclass(frozen=True)
+class ChordData:
+    """The exponents of one integral ``I(A)`` in canonical ordering.
+
+    Attributes
+    ----------
+    n : int
+    run_exponents : (runs,) array
+        Exponent of every run, in the order of ``sectors.runs_of(n - 2)``; real or complex.
+    chords : tuple of PoleDistance
+        Exponent Y of every chord, the runs but the last; exact.
+    """
+
+    n: int
+    run_exponents: NDArray[Any]
+    chords: tuple[PoleDistance, ...]
+
+    @property
+    def is_real(self) -> bool:
+        """True when every exponent is real."""
+        return not np.iscomplexobj(self.run_exponents)
+
+    def on_pole(self) -> list[tuple[Run, int]]:
+        """The runs whose chord sits exactly on a pole, with the level N (Y = -N)."""
+        found = []
+        for run, y in zip(runs_of(self.n - 2), self.chords, strict=False):
+            if y.exact.is_integer and y.exact.re <= 0:
+                found.append((run, int(-y.exact.re)))
+        return found
+
+
+def chord_data(n: int, pairs: tuple[Exact, ...]) -> ChordData:
+    """Build :class:`ChordData` from pair exponents in the order (1,2), (1,3), ..., (n-1,n), rows -2."""
+    m = n - 2
+    exponent: dict[Run, Exact] = {}
+    for a in range(m):
+        # pair (i, j), i < j, stands at (i-1) n - i(i+1)/2 + j - 1; here i = a + 1, j = b + 2
+        base = a * n - (a + 1) * (a + 2) // 2
+        for b in range(a, m):
+            exponent[a, b] = pairs[base + b + 1]
+    total: dict[Run, Exact] = {}
+    runs = runs_of(m)
+    for a, b in runs:
+        # sum over the runs inside (a, b), by inclusion and exclusion
+        value = exponent[a, b]
+        if b > a:
+            value = value + total[a + 1, b] + total[a, b - 1]
+            if b - a > 1:
+                value = value - total[a + 1, b - 1]
+        total[a, b] = value
+    chords = tuple(PoleDistance(total[a, b] + (b - a + 1)) for a, b in runs[:-1])
+    numbers = [exponent[run].value() for run in runs]
+    kind = complex if any(isinstance(x, complex) for x in numbers) else float
+    return ChordData(n, np.array(numbers, dtype=kind), chords)

@@ -1,0 +1,15 @@
+"""Rules: linear functionals that continue ``int_0^1 t^(Y-1) F(t) dt`` to every Y off the poles 0, -1, -2, ...
+
+A rule is data (nodes, weights, null functionals) made by one function per family:
+
+``radau``       node at 0 plus Gauss-Jacobi nodes; Re Y > -1, the cheapest.
+``chebyshev``   interpolation on a real interval that overhangs 0, or on an ellipse around it; any Y.
+``contour``     circle around 0 in closed form plus a segment; any Y, best conditioned, most nodes.
+"""
+
+from .base import PoleDistance, Rule
+from .chebyshev import chebyshev_rule
+from .contour import contour_rule
+from .radau import radau_rule
+
+__all__ = ["PoleDistance", "Rule", "chebyshev_rule", "contour_rule", "radau_rule"]

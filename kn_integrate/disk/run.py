@@ -1,0 +1,269 @@
+"""Run the kernels over all sectors with given rules, and read errors off the null functionals."""
+
+from __future__ import annotations
+
+import math
+import os
+from collections.abc import Sequence
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .chords import ChordData
+from .rules.base import Rule
+from .sectors import SectorTable, sector_table
+
+CHUNK = 2048  # outer points per chunk: fixed, so that the order of summation never depends on the thread count
+EPSILON = 2.0**-52
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """What one pass over all sectors gives.
+
+    Attributes
+    ----------
+    value : float | complex
+    absolute : float
+        Sum of the moduli of all terms: what round-off is relative to in the worst case.
+    square : float
+        Root of the sum of the squares of all terms: what independent errors of the terms add up to.
+    weight_noise : float
+        Root of the sum over chords and nodes of (noise of the rule x what the node contributes)^2: what independent
+        errors of the weights add up to, in units of round-off.
+    truncation : (chords,) array
+        Error of the rule of each chord, as extrapolated from its null functionals.
+    decay : (chords,) array
+        The ratio of successive coefficients that was used (the slowest group of the rule).
+    least : float
+        Least real part of any run; principal logarithms are right where it is positive.
+    points : int
+    """
+
+    value: float | complex
+    absolute: float
+    square: float
+    weight_noise: float
+    truncation: NDArray[np.float64]
+    decay: NDArray[np.float64]
+    least: float
+    points: int
+
+    @property
+    def finite(self) -> bool:
+        """True when every number is finite and every logarithm on its right branch."""
+        return bool(
+            math.isfinite(abs(self.value))
+            and math.isfinite(self.absolute)
+            and np.isfinite(self.truncation).all()
+            and self.least > 0
+        )
+
+
+def sector_points(table: SectorTable, counts: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Number of grid points in each sector for these node counts per chord."""
+    product: NDArray[np.int64] = counts[table.variables].prod(axis=1)
+    return product
+
+
+def predicted_points(n: int, rules: Sequence[Rule]) -> int:
+    """Integrand evaluations that :func:`run` will make for these rules, conjugate halves not yet taken off."""
+    counts = np.array([rule.count for rule in rules], dtype=np.float64)
+    return int(counts[sector_table(n).variables].prod(axis=1).sum())
+
+
+def _chunks(
+    table: SectorTable, sectors: NDArray[np.int64], variables: NDArray[np.int32], counts: NDArray[np.int64]
+) -> NDArray[np.int64]:
+    outer = variables.shape[1] - min(2, variables.shape[1])
+    totals = counts[variables[:, :outer]].prod(axis=1) if outer else np.ones(len(variables), dtype=np.int64)
+    rows = [
+        (s, lo, min(int(totals[s]), lo + CHUNK)) for s in sectors.tolist() for lo in range(0, int(totals[s]), CHUNK)
+    ]
+    return np.array(rows, dtype=np.int64).reshape(-1, 3)
+
+
+def _spread(count: int, threads: int, work: Any) -> None:
+    """Call ``work(first, last)`` over 0..count in fixed pieces; each piece writes to its own rows."""
+    if threads <= 1 or count < 2 * threads:
+        work(0, count)
+        return
+    pieces = min(count, 8 * threads)
+    edges = [count * k // pieces for k in range(pieces + 1)]
+    with ThreadPoolExecutor(threads) as pool:
+        for future in [pool.submit(work, edges[k], edges[k + 1]) for k in range(pieces)]:
+            future.result()
+
+
+def _table_arguments(table: SectorTable, variables: NDArray[np.int32]) -> tuple[Any, ...]:
+    return (
+        variables,
+        table.masks_prev,
+        table.masks_var,
+        table.mask_count,
+        table.run_index,
+        table.run_bounds,
+        table.term_start,
+        table.term_mask,
+        table.term_class,
+    )
+
+
+def _pack(rules: Sequence[Rule], width: int, dtype: type) -> tuple[NDArray[Any], NDArray[Any]]:
+    nodes = np.ones((len(rules), width), dtype=dtype)
+    weights = np.zeros((len(rules), width), dtype=dtype)
+    for row, rule in enumerate(rules):
+        if dtype is float and not rule.is_real:
+            continue  # no sector of the real kernel uses it
+        nodes[row, : rule.count] = rule.nodes
+        weights[row, : rule.count] = rule.weights
+    return nodes, weights
+
+
+def _extrapolate(rule: Rule, rows: NDArray[np.float64]) -> tuple[float, float]:
+    """Error of a rule from the moduli of its null functionals, and the decay ratio used.
+
+    The ratio of coefficients is the theoretical one of the nearest singularity or the measured one, whichever is
+    slower; ratios are taken two apart because singularities on both sides of the interval make coefficients
+    alternate.  The error is the largest of the last two coefficients carried on at that ratio to the first degree the
+    rule gets wrong.
+    """
+    total, slowest = 0.0, 0.0
+    for group in rule.groups:
+        n1, n2, n3, n4 = rows[group.start : group.start + 4]
+        ratio = group.ratio
+        if n3 > 0:
+            ratio = max(ratio, math.sqrt(n1 / n3))
+        if n4 > 0:
+            ratio = max(ratio, math.sqrt(n2 / n4))
+        ratio = min(ratio, 1.0)
+        total += max(n1, n2 * ratio) * ratio**group.steps
+        slowest = max(slowest, ratio)
+    return total, slowest
+
+
+def run(data: ChordData, rules: Sequence[Rule], threads: int = 1) -> Outcome:
+    """Integrate with one rule per chord.
+
+    Parameters
+    ----------
+    data
+        Exponents.
+    rules
+        One rule for each chord, in the order of ``data.chords``.
+    threads
+        Python threads (kernels release the interpreter lock); the result does not depend on it.
+    """
+    table = sector_table(data.n)
+    chord_total = len(rules)
+    real_rule = np.array([rule.is_real for rule in rules])
+    if data.is_real:
+        complex_sector = ~real_rule[table.variables].all(axis=1)
+    else:
+        complex_sector = np.ones(table.count, dtype=bool)
+    width = max(rule.count for rule in rules)
+    counts = np.array([rule.count for rule in rules], dtype=np.int64)
+    real_result = data.is_real and all(y.is_real for y in data.chords)
+    total: complex = 0.0
+    absolute = square = 0.0
+    least = math.inf
+    points = 0
+    null_rows = max(rule.nulls.shape[0] for rule in rules)
+    null_sums = np.zeros((chord_total, null_rows))
+    contributions = np.zeros((chord_total, width), dtype=complex)
+
+    for is_complex in (False, True):
+        sectors = np.flatnonzero(complex_sector == is_complex)
+        if not len(sectors):
+            continue
+        variables, all_rules, all_counts = table.variables, list(rules), counts
+        symmetric = is_complex and real_result
+        if symmetric:
+            variables, all_rules = _halved(table, sectors, rules)
+            all_counts = np.array([rule.count for rule in all_rules], dtype=np.int64)
+        chunks = _chunks(table, sectors, variables, all_counts)
+        points += int(all_counts[variables[sectors]].prod(axis=1).sum())
+        dtype = complex if is_complex else float
+        nodes, weights = _pack(all_rules, width, dtype)
+        out_abs = np.zeros(len(chunks))
+        out_square = np.zeros(len(chunks))
+        out_marginal = np.zeros((len(chunks), table.variables.shape[1], width), dtype=dtype)
+        out_least = np.full(len(chunks), math.inf)
+        exponents = data.run_exponents.astype(dtype)
+        arguments = (chunks, *_table_arguments(table, variables), exponents, all_counts, nodes, weights)
+        outputs: tuple[Any, ...] = (out_abs, out_square, out_marginal)
+        if is_complex:
+            from ..kernels.disk_complex import integrate_chunks as kernel
+
+            outputs += (out_least,)
+        else:
+            from ..kernels.disk_real import integrate_chunks as kernel
+
+        _spread(len(chunks), threads, lambda lo, hi, k=kernel, a=arguments, o=outputs: k(lo, hi, *a, *o))
+        least = min(least, float(out_least.min()))
+        absolute += float(out_abs.sum())
+        square += float(out_square.sum())
+        starts = np.flatnonzero(np.diff(chunks[:, 0], prepend=-1))  # chunks of a sector stand together
+        marginal = np.add.reduceat(out_marginal, starts, axis=0)
+        rows = variables[sectors]
+        terms = weights[rows] * marginal
+        null_table = np.zeros((len(all_rules), null_rows, width), dtype=dtype)
+        for row, rule in enumerate(all_rules):
+            if is_complex or rule.is_real:
+                null_table[row, : rule.nulls.shape[0], : rule.count] = rule.nulls
+        nulls = np.einsum("svzw,svw->svz", null_table[rows], marginal)
+        if symmetric:
+            terms, nulls = terms.real, nulls.real
+        total += terms[:, 0].sum()
+        chord_rows = table.variables[sectors]
+        np.add.at(null_sums, chord_rows, np.abs(nulls))
+        np.add.at(contributions, chord_rows, terms)
+
+    truncation = np.zeros(chord_total)
+    decay = np.zeros(chord_total)
+    noise = 0.0
+    for c, rule in enumerate(rules):
+        truncation[c], decay[c] = _extrapolate(rule, null_sums[c])
+        noise += rule.noise**2 * float((np.abs(contributions[c]) ** 2).sum())
+    total = complex(total)
+    return Outcome(
+        value=total.real if real_result else total,
+        absolute=absolute,
+        square=math.sqrt(square),
+        weight_noise=math.sqrt(noise),
+        truncation=truncation,
+        decay=decay,
+        least=least,
+        points=points,
+    )
+
+
+def _halved(
+    table: SectorTable, sectors: NDArray[np.int64], rules: Sequence[Rule]
+) -> tuple[NDArray[np.int32], list[Rule]]:
+    """Variables with one conjugate-paired rule per sector replaced by its upper half, appended to the rules."""
+    all_rules = list(rules)
+    variables = table.variables.copy()
+    half_row: dict[int, int] = {}
+    paired = np.array([rule.conjugate_pairs and not rule.is_real for rule in rules])
+    counts = np.array([rule.count for rule in rules])
+    for s in sectors.tolist():
+        row = table.variables[s]
+        candidates = [v for v in range(len(row)) if paired[row[v]]]
+        if not candidates:
+            continue
+        v = max(candidates, key=lambda v: counts[row[v]])
+        chord = int(row[v])
+        if chord not in half_row:
+            half_row[chord] = len(all_rules)
+            all_rules.append(rules[chord].upper_half())
+        variables[s, v] = half_row[chord]
+    return variables, all_rules
+
+
+def cpu_count() -> int:
+    """Processors this process may use."""
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else (os.cpu_count() or 1)
