@@ -19,7 +19,7 @@ def read_fields(form: Any) -> None:
         value = getattr(form, item.name)
         if isinstance(value, tuple):
             value = tuple(read(v, f"{item.name}[{k}]")[0] for k, v in enumerate(value))
-        elif not isinstance(value, int) or isinstance(value, bool):
+        else:
             value = read(value, item.name)[0]
         object.__setattr__(form, item.name, value)
 
