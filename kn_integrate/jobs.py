@@ -241,14 +241,14 @@ def only_one(job: Job, fields: Iterable[Field]) -> Field | None:
 
 def integrand_of(job: Job) -> Integrand | None:
     """The integrand of a job; None where the job gives exponents, which leave no room for one."""
-    from .integrand import parse_integrand
-
     if EXPONENTS.place in job.values:
         only_one(job, (EXPONENTS, INTEGRAND))
         return None
     text = job.get(INTEGRAND)
     if text is None:
         raise InputError(job.name(INTEGRAND), "nothing", "an integrand such as 'PT(1,2,3,4,5)'")
+    from .integrand import parse_integrand
+
     with _named(job.name(INTEGRAND)):
         return parse_integrand(text)
 
@@ -264,7 +264,7 @@ def point_of(job: Job) -> Mandelstams | DiskExponents:
     ways = (PLANAR, PAIRS, CHORDS, EXPONENTS)
     way = only_one(job, ways)
     if way is None:
-        names = [field.option for field in ways if field.table == "kinematics"]
+        names = [field.option for field in ways]
         raise InputError("kinematics", "nothing", f"one of {', '.join(names)}, or a job file with a [kinematics] table")
     for field, users in ((ROW_SUMS, (PLANAR, PAIRS, CHORDS)), (PLANAR_ORDERING, (PLANAR,))):
         if field.place in job.values and way not in users:

@@ -67,7 +67,7 @@ def outcome_of_pole(error: PoleError) -> Outcome:
         ("status", "ON_POLE"),
         ("channel", ".".join(str(label) for label in error.channel)),
         ("level", str(error.level)),
-        ("at", str(error.at)),
+        ("at", _cell(plain(error.at))),
         ("advice", _POLE_ADVICE),
     )
     return Outcome(rows, document, ok=False)
@@ -107,14 +107,14 @@ def _rows(prefix: str, value: Any) -> list[tuple[str, str]]:
         return [row for key, item in value.items() for row in _rows(f"{prefix}.{key}" if prefix else str(key), item)]
     if isinstance(value, list) and any(isinstance(item, (list, Mapping)) for item in value):
         return [row for place, item in enumerate(value, start=1) for row in _rows(f"{prefix}.{place}", item)]
-    if isinstance(value, list):
-        return [(prefix, ",".join(_cell(item) for item in value) or "-")]
     return [(prefix, _cell(value))]
 
 
 def _cell(value: Any) -> str:
     if isinstance(value, bool):
         return "yes" if value else "no"
+    if isinstance(value, list):
+        return ",".join(_cell(item) for item in value) or "-"
     return "-" if value is None else str(value)
 
 

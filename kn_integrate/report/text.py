@@ -49,8 +49,8 @@ def error_text(error: Any) -> str:
 def value_with_error(value: Any, error: Any, digits: int | None = None) -> str:
     """The value down to the decimal place of its error, and the error rounded up to one digit.
 
-    The digits cut off are themselves an error, so the printed bound covers them: the printed interval contains
-    everything that the unprinted one does.
+    The digits cut off are themselves an error, so the printed bound covers them too, unless they are below a
+    thousandth of it.
 
     Parameters
     ----------
@@ -77,7 +77,7 @@ def value_with_error(value: Any, error: Any, digits: int | None = None) -> str:
     place = _one_digit_up(bound).adjusted()
     while True:
         shown = [_round_to(part, place) for part in exact]
-        total = _one_digit_up(bound + _distance(exact, shown))
+        total = max(_one_digit_up(bound), _one_digit_up(_NEGLIGIBLE.add(bound, _distance(exact, shown))))
         if total.adjusted() <= place:
             total = max(total, Decimal(1).scaleb(place))
             return f"{_join([_placed_text(part, place) for part in shown])} +- {_digit_text(total)}"
@@ -136,6 +136,9 @@ def _context(precision: int, rounding: str) -> Context:
     return Context(prec=precision, rounding=rounding, Emin=MIN_EMIN, Emax=MAX_EMAX, traps=[])
 
 
+_NEGLIGIBLE = _context(4, ROUND_HALF_EVEN)  # sums in it do not see a term below a thousandth of the other
+
+
 def _divide(value: Fraction, precision: int, rounding: str) -> Decimal:
     return _context(precision, rounding).divide(Decimal(value.numerator), Decimal(value.denominator))
 
@@ -169,11 +172,9 @@ def _round_to(value: Fraction, place: int) -> Fraction:
 
 
 def _distance(exact: list[Fraction], shown: list[Fraction]) -> Decimal:
-    """Modulus of the difference, rounded up."""
+    """Modulus of the difference."""
     square = sum(((a - b) ** 2 for a, b in zip(exact, shown, strict=True)), Fraction(0))
-    up = _context(20, ROUND_CEILING)
-    root = _divide(square, 20, ROUND_CEILING).sqrt(up)
-    return up.next_plus(root) if root else root  # a decimal square root rounds to nearest in every context
+    return _divide(square, 20, ROUND_CEILING).sqrt(_context(20, ROUND_CEILING))
 
 
 def _placed_text(value: Fraction, place: int) -> str:
