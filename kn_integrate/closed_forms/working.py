@@ -54,13 +54,13 @@ def settled(evaluate: Callable[[Context], Big], digits: int) -> Any:
     InputError
         ``digits`` outside 1..5000.
     NotAvailableError
-        No agreement at 8 digits + 400 digits of working precision: the value cannot be told from zero.
+        No agreement at 5 digits + 200 digits of working precision: the value cannot be told from zero.
     """
     if isinstance(digits, bool) or not isinstance(digits, int) or not 1 <= digits <= _MAX_DIGITS:
         raise InputError("digits", repr(digits), f"an integer from 1 to {_MAX_DIGITS}")
     working = digits + 12
     last = evaluate(context(working))
-    while working < 8 * digits + 400:
+    while working < 5 * digits + 200:
         working = working + working // 4 + 12
         ctx = context(working)
         value = evaluate(ctx)

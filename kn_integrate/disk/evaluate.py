@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
+
+import numpy as np
 
 from ..errors import WorkLimitError
 from ..exact import Exact
 from .chords import ChordData, chord_data
-from .plan import MAX_NODES, Choice, grades, initial_choices, plan_table, raised
-from .run import EPSILON, Outcome, predicted_points, run
+from .plan import MAX_NODES, Choice, amplification, initial_choices, layout_of, plan_table, raised
+from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
 SAFETY = 8.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
@@ -52,16 +54,47 @@ class Integral:
         return plan_table(self.choices)
 
 
-def _roundoff(data: ChordData, choices: list[Choice], outcome: Outcome) -> float:
-    """Bound on the round-off: every term carries the errors of its weights, exponents and logarithms.
-
-    An exponent rounded to double shifts a run's factor by ``eps |A| |log P|``, and P lies between 1 and the number of
-    gaps in the run; weights of the (n-3)-fold product add up.
-    """
+def _spread(data: ChordData) -> float:
+    """A bound on ``sum |A log P|`` over the runs: how large the logarithm of the integrand can be."""
     runs = runs_of(data.n - 2)
-    spread = sum(abs(a) * math.log(b - c + 1) for a, (c, b) in zip(data.run_exponents.tolist(), runs, strict=True))
+    return float(sum(abs(a) * math.log(b - c + 1) for a, (c, b) in zip(data.run_exponents.tolist(), runs, strict=True)))
+
+
+def _worst_roundoff(data: ChordData, choices: list[Choice], outcome: Outcome) -> float:
+    """Bound on the round-off if all errors conspired: every term carries those of its weights and exponents."""
     noise = sorted((choice.rule().noise for choice in choices), reverse=True)[: data.n - 3]
-    return EPSILON * (8.0 + spread + sum(noise)) * outcome.absolute
+    return EPSILON * (8.0 + _spread(data) + sum(noise)) * outcome.absolute
+
+
+PROBE = 2.0**-24  # relative size of the trial perturbation of the exponents
+PROBES = 2
+SIGMAS = 6.0
+
+
+def _likely_roundoff(data: ChordData, outcome: Outcome) -> float:
+    """Round-off of weights and of single terms as independent errors add up, several standard deviations.
+
+    Errors of a weight are common to all terms with its node, so they are taken on the marginal sums.
+    """
+    return SIGMAS * EPSILON * (outcome.weight_noise + (4.0 + 0.5 * _spread(data)) * outcome.square)
+
+
+def _exponent_rounding(data: ChordData, layout: Layout, outcome: Outcome, threads: int) -> tuple[float, int]:
+    """What the rounding of exponents to double costs: an error that is smooth in all variables, so it is measured.
+
+    The integral is done again with exponents perturbed by fixed pseudo-random amounts far above round-off, and the
+    change scaled down.  Returns the error and the evaluations spent.
+    """
+    generator = np.random.default_rng(20240229)  # fixed: the same input must give the same error
+    largest, points = 0.0, 0
+    size = len(data.run_exponents)
+    for _ in range(PROBES):
+        signs = generator.uniform(0.5, 1.0, size) * generator.choice([-1.0, 1.0], size)
+        shaken = replace(data, run_exponents=data.run_exponents * (1.0 + PROBE * signs))
+        trial = run(shaken, layout, threads)
+        points += trial.points
+        largest = max(largest, abs(trial.value - outcome.value) / PROBE)
+    return SIGMAS * EPSILON * largest, points
 
 
 def integrate(
@@ -75,6 +108,19 @@ def integrate(
 ) -> Integral:
     """Integrate to a tolerance; no chord may be on a pole.
 
+    Parameters
+    ----------
+    data
+        Exponents.
+    rtol, atol
+        Stop when the error is at most ``max(atol, rtol |value|)``.
+    max_points
+        Integrand evaluations that may be spent over all passes.
+    threads
+        Python threads; the result does not depend on it.
+    family
+        Use this family of rules for every chord instead of choosing.
+
     Raises
     ------
     WorkLimitError
@@ -82,73 +128,108 @@ def integrate(
     """
     digits = min(-math.log10(max(rtol, 1e-15)), 15.0) if rtol > 0 else 15.0
     choices = initial_choices(data, digits, family)
-    grade = [0] * len(choices)
-    best: Integral | None = None
+    best: _Pass | None = None
     spent = 0
     for attempt in range(1, MAX_PASSES + 1):
-        rules = [choice.rule() for choice in choices]
-        needed = predicted_points(data.n, rules)
-        if spent + needed > max_points:
+        layout = layout_of(data.n, choices)
+        if spent + layout.points > max_points:
             if best is None:
-                raise WorkLimitError(needed, max_points, "points", "raise max_points=, relax rtol=, or use method='kz'")
+                raise WorkLimitError(
+                    layout.points, max_points, "points", "raise max_points=, relax rtol=, or use method='kz'"
+                )
             break
-        outcome = run(data, rules, threads)
+        outcome = run(data, layout, threads)
         spent += outcome.points
         if not outcome.finite:
-            # nodes of several chords together left the region where the branch is known: use the safer rule
-            change = False
-            for c, choice in enumerate(choices):
-                if choice.family in ("ellipse", "overhang") or (choice.family == "radau" and not choice.y.is_real):
-                    if family is None and grade[c] + 1 < grades(choice.y):
-                        grade[c] = grades(choice.y) - 1
-                        choices[c] = raised(data, choice, c, grade[c], digits)
-                        change = True
-            if not change:
+            # nodes of several chords together left the region where the branch is known: use the safest rule there is
+            changed = [_safer(data, choice, c, digits) if family is None else choice for c, choice in enumerate(choices)]
+            if changed == choices:
                 break
+            choices = changed
             continue
-        roundoff = _roundoff(data, choices, outcome)
+        worst = _worst_roundoff(data, choices, outcome)
         truncation = SAFETY * float(outcome.truncation.sum())
-        candidate = Integral(outcome.value, truncation, roundoff, spent, tuple(choices), attempt)
-        if best is None or candidate.error < best.error:
-            best = candidate
         target = max(atol, rtol * abs(outcome.value))
-        if candidate.error <= target:
-            return candidate
+        likely = min(worst, _likely_roundoff(data, outcome))
+        if worst <= 0.1 * target or (worst <= target and truncation + worst <= target):
+            likely = worst  # no need to look closer
+        current = _Pass(outcome, layout, tuple(choices), attempt, truncation, likely, likely == worst)
+        if best is None or truncation + likely < best.truncation + best.roundoff:
+            best = current
+        if truncation + likely <= target:
+            if not current.settled:
+                rounding, points = _exponent_rounding(data, layout, outcome, threads)
+                spent += points
+                current = replace(current, roundoff=min(worst, likely + rounding), settled=True)
+                best = current
+            if truncation + current.roundoff <= target:
+                break
         improved = False
-        if roundoff > 0.4 * target and family is None:
-            improved = _raise_grades(data, choices, grade, digits)
-        goal = max(target, 2.0 * roundoff)
+        new = list(choices)
+        if likely > 0.3 * target and family is None:
+            new = _raise_strongest(data, new, digits)
+            improved = new != choices
+        goal = max(target, likely)
         share = 0.5 * goal / (SAFETY * len(choices))
-        for c, choice in enumerate(choices):
+        for c, choice in enumerate(new):
             excess = float(outcome.truncation[c]) / share if share > 0 else math.inf
-            if choice.family != rules[c].kind or excess <= 1.0:
+            if choice.family != choices[c].family or excess <= 1.0:
                 continue
-            per_node = -math.log(min(float(outcome.decay[c]), 0.98)) * (
-                2.0 if choice.family in ("radau", "ellipse", "contour") else 1.0
-            )
-            extra = min(max(1, math.ceil(math.log(min(excess, 1e30)) / per_node)), 12)
+            rate = -math.log(min(float(outcome.decay[c]), 0.98))
+            per_step = rate * (1.0 if choice.family == "overhang" else 2.0)
+            extra = min(max(1, math.ceil(math.log(min(excess, 1e30)) / per_step)), 12)
             if choice.total + extra <= MAX_NODES:
-                choices[c] = choice.more(extra)
+                new[c] = choice.more(extra)
                 improved = True
         if not improved:
             break
+        choices = new
     if best is None:
         return Integral(math.nan, math.inf, math.inf, spent, tuple(choices), MAX_PASSES)
-    return Integral(best.value, best.truncation, best.roundoff, spent, best.choices, best.passes)
+    if not best.settled:
+        worst = _worst_roundoff(data, list(best.choices), best.outcome)
+        rounding, points = _exponent_rounding(data, best.layout, best.outcome, threads)
+        spent += points
+        best = replace(best, roundoff=min(worst, best.roundoff + rounding), settled=True)
+    return Integral(best.outcome.value, best.truncation, best.roundoff, spent, best.choices, best.attempt)
 
 
-def _raise_grades(data: ChordData, choices: list[Choice], grade: list[int], digits: float) -> bool:
-    """Move the chords whose rules amplify most to a better conditioned family; False when none is left."""
-    open_chords = [c for c, choice in enumerate(choices) if grade[c] + 1 < grades(choice.y) and choice.y.real < 0.5]
+@dataclass(frozen=True)
+class _Pass:
+    """One pass and what is known of its errors; ``settled`` when the round-off is a bound and not a lower part."""
+
+    outcome: Outcome
+    layout: Layout
+    choices: tuple[Choice, ...]
+    attempt: int
+    truncation: float
+    roundoff: float
+    settled: bool
+
+
+def _safer(data: ChordData, choice: Choice, index: int, digits: float) -> Choice:
+    """One step towards nodes that keep runs in the right half plane: small circles, then the contour."""
+    if choice.family in ("contour", "overhang") or (choice.family == "radau" and choice.y.is_real):
+        return choice
+    return raised(data, choice, index, digits, "nodes of several chords together met a zero of a run", "small disc")
+
+
+def _raise_strongest(data: ChordData, choices: list[Choice], digits: float) -> list[Choice]:
+    """The chords whose rules amplify most, one step up their ladders, as far as that helps."""
+    open_chords = [
+        c
+        for c, choice in enumerate(choices)
+        if choice.y.real < 0.5 and choice.family not in ("disc", "small disc", "contour")
+    ]
     if not open_chords:
-        return False
-    strength = {c: choices[c].rule().amplification * abs(choices[c].y.value) for c in open_chords}
+        return choices
+    strength = {c: amplification(choices[c].y, choices[c].family) for c in open_chords}
     top = max(strength.values())
+    new = list(choices)
     for c in open_chords:
-        if strength[c] >= top / 30.0:
-            grade[c] += 1
-            choices[c] = raised(data, choices[c], c, grade[c], digits)
-    return True
+        if strength[c] >= top - 0.7:
+            new[c] = raised(data, choices[c], c, digits, "raised after a pass that lost too many digits")
+    return new
 
 
 def integrate_pairs(n: int, pairs: tuple[Exact, ...], rtol: float, atol: float, **options: Any) -> Integral:

@@ -11,12 +11,14 @@ from typing import Any
 import numpy as np
 
 from .chords import ChordData
-from .rules import PoleDistance, Rule, chebyshev_rule, contour_rule, radau_rule
+from .rules import PoleDistance, Rule, chebyshev_rule, contour_rule, disc_rule, radau_rule
 from .rules.base import ellipse_parameter, symmetric_bend
 from .rules.chebyshev import overhang_bend
-from .sectors import runs_of
+from .rules.disc import disc_bend, disc_decay
+from .run import Layout
+from .sectors import runs_of, sector_table
 
-FAMILIES = ("radau", "overhang", "ellipse", "contour")
+FAMILIES = ("radau", "overhang", "ellipse", "disc", "small disc", "contour")
 REACH = 0.25  # overhang of the real rule: further costs nodes, less costs digits
 FRACTION = 0.4  # circle radius times cluster size; below 1/2 every run keeps a positive real part
 ELLIPSE = 0.4  # exponent e of rho_e = rho^e: sampling ellipse against the singular one
@@ -39,15 +41,21 @@ class Choice:
     segment: int
     reason: str
 
-    def rule(self) -> Rule:
-        """Build the rule (cached)."""
+    def rule(self, faced: bool = False) -> Rule:
+        """Build the rule (cached).
+
+        ``faced``: in this sector a cluster on a circle stands on the other side; a disc then takes its small circle
+        and the larger number of nodes that goes with it.
+        """
+        if self.family == "disc" and faced:
+            return _build(self.y, self.size, "small disc", _small_count(self.size, self.nodes), 0)
         return _build(self.y, self.size, self.family, self.nodes, self.segment)
 
     def more(self, extra: int, group: int = 0) -> Choice:
         """The same with more nodes; a contour grows on both parts."""
         if self.family == "contour":
             return replace(self, nodes=self.nodes + 2 * extra, segment=self.segment + extra)
-        step = 2 * extra if self.family == "ellipse" else extra
+        step = 2 * extra if self.family in ("ellipse", "disc", "small disc") else extra
         return replace(self, nodes=self.nodes + step)
 
     @property
@@ -64,7 +72,15 @@ def _build(y: PoleDistance, size: int, family: str, nodes: int, segment: int) ->
         return chebyshev_rule(y, size, nodes, reach=REACH)
     if family == "ellipse":
         return chebyshev_rule(y, size, nodes, rho=ellipse_rho(size))
+    if family in ("disc", "small disc"):
+        return disc_rule(y, size, nodes, wide=family == "disc")
     return contour_rule(y, size, nodes, segment, FRACTION)
+
+
+def _small_count(size: int, nodes: int) -> int:
+    """Nodes on the small circle that give what ``nodes`` give on the large one."""
+    ratio = math.log(disc_decay(size, True)) / math.log(disc_decay(size, False))
+    return 2 * math.ceil(0.5 * nodes * ratio)
 
 
 def ellipse_rho(size: int) -> float:
@@ -72,30 +88,32 @@ def ellipse_rho(size: int) -> float:
     return float(ellipse_parameter(1.0 / symmetric_bend(size)) ** ELLIPSE)
 
 
-def family_for(y: PoleDistance, grade: int) -> tuple[str, str]:
-    """The cheapest family that is well enough conditioned at this grade, and the reason in words.
+_LADDERS: dict[str, tuple[str, ...]] = {
+    "mild": ("radau", "ellipse", "disc", "small disc", "contour"),
+    "deep real": ("overhang", "ellipse", "disc", "small disc", "contour"),
+    "deep complex": ("ellipse", "disc", "small disc", "contour"),
+}
 
-    Grade 0 is the cheapest, each further one costs more points and amplifies round-off less.
-    """
-    order: tuple[str, ...]
+
+def ladder(y: PoleDistance) -> tuple[str, ...]:
+    """The families that serve an exponent, each better conditioned and dearer than the one before."""
     if y.real > -0.85:
-        order = ("radau", "ellipse", "contour")
-        why = "Re Y > -0.85: endpoint subtraction costs one node"
-    elif y.is_real:
-        order = ("overhang", "ellipse", "contour")
-        why = "deep real exponent: real nodes past the endpoint"
-    else:
-        order = ("ellipse", "contour")
-        why = "deep complex exponent: nodes on an ellipse"
-    grade = min(grade, len(order) - 1)
-    if grade:
-        why = f"raised to {order[grade]}: the cheaper rule amplified round-off too much"
-    return order[grade], why
+        return _LADDERS["mild"]
+    return _LADDERS["deep real"] if y.is_real else _LADDERS["deep complex"]
 
 
-def grades(y: PoleDistance) -> int:
-    """Number of grades :func:`family_for` distinguishes for this exponent."""
-    return 3 if y.real > -0.85 or y.is_real else 2
+def amplification(y: PoleDistance, family: str) -> float:
+    """log10 of how much a rule amplifies round-off, as fitted to one-variable integrals of size-1..4 clusters."""
+    depth = max(0.0, -y.real)
+    if family == "radau":
+        return 0.1 + 3.0 * depth
+    if family == "overhang":
+        return 0.6 + 1.3 * depth
+    if family == "ellipse":
+        return 0.1 + 0.7 * depth
+    if family in ("disc", "small disc"):
+        return 0.2 + 0.2 * depth
+    return 0.2 + 0.45 * depth
 
 
 def _growth(data: ChordData, index: int, t: np.ndarray[Any, Any]) -> np.ndarray[Any, Any]:
@@ -148,32 +166,85 @@ def first_count(data: ChordData, index: int, family: str, digits: float) -> tupl
         return max(nodes, 6), 0
     if family == "overhang":
         return max(math.ceil(float((work / np.log(trial)).min())) + 1, 8), 0
+    if family == "small disc":
+        nodes, segment = first_count(data, index, "disc", digits)
+        return _small_count(size, nodes), segment
+    if family == "disc":
+        # the circle is |x| = 1 about 0; compare with the model on the real ends of larger circles
+        bend = disc_bend(size, True)
+        radii = (1.0 / disc_decay(size, True)) ** _FRACTIONS
+        x = np.concatenate([-radii, radii, [0.0, 0.5, 1.0]])
+        stretch = 1.0 + bend - bend * x
+        level = _growth(data, index, x / stretch) - (y.real + 1.0) * np.log(np.abs(stretch))
+        bound = np.maximum(level[:count], level[count : 2 * count]) - level[2 * count :].max()
+        return max(2 * math.ceil(0.5 * float(((goal + np.maximum(bound, 0.0)) / np.log(radii)).min())) + 2, 10), 0
     rate = np.log(trial) - math.log(ellipse_rho(size))
     usable = rate > 0.05
     return max(2 * math.ceil(0.5 * float((work[usable] / rate[usable]).min())) + 2, 10), 0
 
 
 def initial_choices(data: ChordData, digits: float, family: str | None = None) -> list[Choice]:
-    """The first plan for this many digits; ``family`` forces one rule for every chord it can serve."""
-    choices = []
-    for index, run in enumerate(runs_of(data.n - 2)[:-1]):
-        y = data.chords[index]
-        if family is None:
-            name, why = family_for(y, 0)
-        else:
-            name, why = family, "asked for by name"
-        nodes, segment = first_count(data, index, name, digits)
-        choices.append(Choice(run, y, run[1] - run[0] + 1, name, min(nodes, MAX_NODES), segment, why))
-    return choices
+    """The first plan for this many digits; ``family`` forces one family for every chord it can serve.
+
+    Every chord starts with its cheapest family.  As long as some sector would amplify round-off beyond the tolerance,
+    the chord of that sector that amplifies most is given the next family of its ladder.
+    """
+    runs = runs_of(data.n - 2)[:-1]
+    if family is not None:
+        names = [family if family != "radau" or y.real > -1.0 else "contour" for y in data.chords]
+        return [_choice(data, k, name, digits, "asked for by name") for k, name in enumerate(names)]
+    ladders = [ladder(y) for y in data.chords]
+    grade = [0] * len(runs)
+    strength = np.array([amplification(y, steps[0]) for y, steps in zip(data.chords, ladders, strict=True)])
+    variables = sector_table(data.n).variables
+    budget = 14.5 - digits  # a decade for the error to stay below the tolerance, and a bit for sums of many terms
+    for _ in range(3 * len(runs)):
+        totals = strength[variables].sum(axis=1)
+        row = variables[int(totals.argmax())]
+        movable = [c for c in row.tolist() if ladders[c][grade[c]] != "disc" and data.chords[c].real < 0]
+        if totals.max() <= budget or not movable:
+            break
+        c = max(movable, key=lambda c: strength[c])
+        grade[c] += 1
+        strength[c] = amplification(data.chords[c], ladders[c][grade[c]])
+    why = ["cheapest", "raised once, round-off", "raised twice, round-off"]
+    return [_choice(data, k, ladders[k][grade[k]], digits, why[grade[k]]) for k in range(len(runs))]
 
 
-def raised(data: ChordData, choice: Choice, index: int, grade: int, digits: float) -> Choice:
-    """The choice for a chord at a higher grade."""
-    name, why = family_for(choice.y, grade)
-    if name == choice.family:
+def _choice(data: ChordData, index: int, family: str, digits: float, reason: str) -> Choice:
+    run = runs_of(data.n - 2)[index]
+    nodes, segment = first_count(data, index, family, digits)
+    return Choice(run, data.chords[index], run[1] - run[0] + 1, family, min(nodes, MAX_NODES), segment, reason)
+
+
+def raised(data: ChordData, choice: Choice, index: int, digits: float, reason: str, at_least: str = "") -> Choice:
+    """The choice for a chord one step up its ladder (to ``at_least`` if that is further); the same at its end."""
+    steps = ladder(choice.y)
+    place = steps.index(choice.family)
+    target = max(place + 1, steps.index(at_least) if at_least else 0)
+    if target >= len(steps):
         return choice
-    nodes, segment = first_count(data, index, name, digits)
-    return replace(choice, family=name, nodes=min(nodes, MAX_NODES), segment=segment, reason=why)
+    return _choice(data, index, steps[target], digits, reason)
+
+
+def layout_of(n: int, choices: Sequence[Choice]) -> Layout:
+    """Rules and rows for all sectors: discs that face another disc take their small circle."""
+    table = sector_table(n)
+    rules = [choice.rule() for choice in choices]
+    chord = list(range(len(choices)))
+    rows = table.variables
+    is_disc = np.array([choice.family == "disc" for choice in choices])
+    if is_disc.any():
+        on_disc = is_disc[table.variables]
+        other = np.take_along_axis(on_disc, np.maximum(table.sibling, 0), axis=1) & (table.sibling >= 0)
+        faced = on_disc & other
+        if faced.any():
+            rows = table.variables.copy()
+            for c in np.unique(table.variables[faced]).tolist():
+                rows[faced & (table.variables == c)] = len(rules)
+                rules.append(choices[c].rule(faced=True))
+                chord.append(c)
+    return Layout(tuple(rules), np.array(chord), rows)
 
 
 def plan_table(choices: Sequence[Choice]) -> list[dict[str, Any]]:

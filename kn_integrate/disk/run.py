@@ -63,16 +63,33 @@ class Outcome:
         )
 
 
-def sector_points(table: SectorTable, counts: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Number of grid points in each sector for these node counts per chord."""
-    product: NDArray[np.int64] = counts[table.variables].prod(axis=1)
-    return product
+@dataclass(frozen=True)
+class Layout:
+    """Which rule every variable of every sector uses.
+
+    Attributes
+    ----------
+    rules : tuple of Rule
+    chord : (rules,) array
+        The chord each rule is for; one chord may have several rules.
+    rows : (S, V) int32
+        Index into ``rules`` for each variable of each sector, in the order of ``SectorTable.variables``.
+    """
+
+    rules: tuple[Rule, ...]
+    chord: NDArray[np.int64]
+    rows: NDArray[np.int32]
+
+    @property
+    def points(self) -> float:
+        """Integrand evaluations, conjugate halves not yet taken off."""
+        counts = np.array([rule.count for rule in self.rules], dtype=np.float64)
+        return float(counts[self.rows].prod(axis=1).sum())
 
 
-def predicted_points(n: int, rules: Sequence[Rule]) -> int:
-    """Integrand evaluations that :func:`run` will make for these rules, conjugate halves not yet taken off."""
-    counts = np.array([rule.count for rule in rules], dtype=np.float64)
-    return int(counts[sector_table(n).variables].prod(axis=1).sum())
+def simple_layout(n: int, rules: Sequence[Rule]) -> Layout:
+    """One rule per chord."""
+    return Layout(tuple(rules), np.arange(len(rules)), sector_table(n).variables)
 
 
 def _chunks(
@@ -145,23 +162,23 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64]) -> tuple[float, float]:
     return total, slowest
 
 
-def run(data: ChordData, rules: Sequence[Rule], threads: int = 1) -> Outcome:
-    """Integrate with one rule per chord.
+def run(data: ChordData, layout: Layout, threads: int = 1) -> Outcome:
+    """Integrate with the given rules.
 
     Parameters
     ----------
     data
         Exponents.
-    rules
-        One rule for each chord, in the order of ``data.chords``.
+    layout
+        The rules and where they are used.
     threads
         Python threads (kernels release the interpreter lock); the result does not depend on it.
     """
     table = sector_table(data.n)
-    chord_total = len(rules)
+    rules = layout.rules
     real_rule = np.array([rule.is_real for rule in rules])
     if data.is_real:
-        complex_sector = ~real_rule[table.variables].all(axis=1)
+        complex_sector = ~real_rule[layout.rows].all(axis=1)
     else:
         complex_sector = np.ones(table.count, dtype=bool)
     width = max(rule.count for rule in rules)
@@ -172,17 +189,17 @@ def run(data: ChordData, rules: Sequence[Rule], threads: int = 1) -> Outcome:
     least = math.inf
     points = 0
     null_rows = max(rule.nulls.shape[0] for rule in rules)
-    null_sums = np.zeros((chord_total, null_rows))
-    contributions = np.zeros((chord_total, width), dtype=complex)
+    null_sums = np.zeros((len(rules), null_rows))
+    contributions = np.zeros((len(rules), width), dtype=complex)
 
     for is_complex in (False, True):
         sectors = np.flatnonzero(complex_sector == is_complex)
         if not len(sectors):
             continue
-        variables, all_rules, all_counts = table.variables, list(rules), counts
+        variables, all_rules, all_counts = layout.rows, list(rules), counts
         symmetric = is_complex and real_result
         if symmetric:
-            variables, all_rules = _halved(table, sectors, rules)
+            variables, all_rules = _halved(layout, sectors)
             all_counts = np.array([rule.count for rule in all_rules], dtype=np.int64)
         chunks = _chunks(table, sectors, variables, all_counts)
         points += int(all_counts[variables[sectors]].prod(axis=1).sum())
@@ -218,16 +235,17 @@ def run(data: ChordData, rules: Sequence[Rule], threads: int = 1) -> Outcome:
         if symmetric:
             terms, nulls = terms.real, nulls.real
         total += terms[:, 0].sum()
-        chord_rows = table.variables[sectors]
-        np.add.at(null_sums, chord_rows, np.abs(nulls))
-        np.add.at(contributions, chord_rows, terms)
+        np.add.at(null_sums, layout.rows[sectors], np.abs(nulls))
+        np.add.at(contributions, layout.rows[sectors], terms)
 
-    truncation = np.zeros(chord_total)
-    decay = np.zeros(chord_total)
+    truncation = np.zeros(table.chord_count)
+    decay = np.zeros(table.chord_count)
     noise = 0.0
-    for c, rule in enumerate(rules):
-        truncation[c], decay[c] = _extrapolate(rule, null_sums[c])
-        noise += rule.noise**2 * float((np.abs(contributions[c]) ** 2).sum())
+    for k, (c, rule) in enumerate(zip(layout.chord.tolist(), rules, strict=True)):
+        error, ratio = _extrapolate(rule, null_sums[k])
+        truncation[c] += error
+        decay[c] = max(decay[c], ratio)
+        noise += rule.noise**2 * float((np.abs(contributions[k]) ** 2).sum())
     total = complex(total)
     return Outcome(
         value=total.real if real_result else total,
@@ -241,27 +259,25 @@ def run(data: ChordData, rules: Sequence[Rule], threads: int = 1) -> Outcome:
     )
 
 
-def _halved(
-    table: SectorTable, sectors: NDArray[np.int64], rules: Sequence[Rule]
-) -> tuple[NDArray[np.int32], list[Rule]]:
-    """Variables with one conjugate-paired rule per sector replaced by its upper half, appended to the rules."""
-    all_rules = list(rules)
-    variables = table.variables.copy()
+def _halved(layout: Layout, sectors: NDArray[np.int64]) -> tuple[NDArray[np.int32], list[Rule]]:
+    """Rows with one conjugate-paired rule per sector replaced by its upper half, appended to the rules."""
+    rules = list(layout.rules)
+    rows = layout.rows.copy()
     half_row: dict[int, int] = {}
     paired = np.array([rule.conjugate_pairs and not rule.is_real for rule in rules])
     counts = np.array([rule.count for rule in rules])
     for s in sectors.tolist():
-        row = table.variables[s]
+        row = layout.rows[s]
         candidates = [v for v in range(len(row)) if paired[row[v]]]
         if not candidates:
             continue
         v = max(candidates, key=lambda v: counts[row[v]])
-        chord = int(row[v])
-        if chord not in half_row:
-            half_row[chord] = len(all_rules)
-            all_rules.append(rules[chord].upper_half())
-        variables[s, v] = half_row[chord]
-    return variables, all_rules
+        full = int(row[v])
+        if full not in half_row:
+            half_row[full] = len(rules)
+            rules.append(rules[full].upper_half())
+        rows[s, v] = half_row[full]
+    return rows, rules
 
 
 def cpu_count() -> int:

@@ -146,6 +146,8 @@ class SectorTable:
     term_start : (S, R + 1) int32
     term_mask, term_class : (S, T) int32
         The terms of each run: which monomial, times 1, t_i, t_j or t_i t_j (class 0..3).
+    sibling : (S, n-3) int32
+        For each variable the position, in the same row, of the variable on the other side of its parent; -1 if none.
     """
 
     n: int
@@ -161,6 +163,7 @@ class SectorTable:
     term_start: NDArray[np.int32]
     term_mask: NDArray[np.int32]
     term_class: NDArray[np.int32]
+    sibling: NDArray[np.int32]
 
     @property
     def count(self) -> int:
@@ -249,10 +252,15 @@ def sector_table(n: int) -> SectorTable:
                 term_class += [c for _, c in encoded]
                 start.append(len(term_mask))
             bounds.append(len(run_index))
-        chords = [index[tree.subtree[v]] for v in (*outer, *pair)]
+        order = [*outer, *pair]
+        chords = [index[tree.subtree[v]] for v in order]
+        sibling = [
+            next((k for k, u in enumerate(order) if u != v and tree.parent[u] == tree.parent[v]), -1) for v in order
+        ]
         rows.append(
             dict(
                 variables=chords,
+                sibling=sibling,
                 masks_prev=prev,
                 masks_var=var,
                 run_index=run_index,
@@ -287,4 +295,5 @@ def sector_table(n: int) -> SectorTable:
         term_start=packed("term_start"),
         term_mask=packed("term_mask"),
         term_class=packed("term_class"),
+        sibling=packed("sibling"),
     )

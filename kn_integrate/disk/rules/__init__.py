@@ -4,12 +4,14 @@ A rule is data (nodes, weights, null functionals) made by one function per famil
 
 ``radau``       node at 0 plus Gauss-Jacobi nodes; Re Y > -1, the cheapest.
 ``chebyshev``   interpolation on a real interval that overhangs 0, or on an ellipse around it; any Y.
-``contour``     circle around 0 in closed form plus a segment; any Y, best conditioned, most nodes.
+``disc``        Taylor coefficients on one circle through 1; any Y, best conditioned.
+``contour``     circle around 0 in closed form plus a segment; any Y; the independent second opinion.
 """
 
 from .base import PoleDistance, Rule
 from .chebyshev import chebyshev_rule
 from .contour import contour_rule
+from .disc import disc_rule
 from .radau import radau_rule
 
-__all__ = ["PoleDistance", "Rule", "chebyshev_rule", "contour_rule", "radau_rule"]
+__all__ = ["PoleDistance", "Rule", "chebyshev_rule", "contour_rule", "disc_rule", "radau_rule"]
