@@ -6,7 +6,6 @@ import math
 from dataclasses import dataclass, replace
 from typing import Any
 
-
 import numpy as np
 
 from ..errors import WorkLimitError
@@ -142,7 +141,9 @@ def integrate(
         spent += outcome.points
         if not outcome.finite:
             # nodes of several chords together left the region where the branch is known: use the safest rule there is
-            changed = [_safer(data, choice, c, digits) if family is None else choice for c, choice in enumerate(choices)]
+            changed = [
+                _safer(data, choice, c, digits) if family is None else choice for c, choice in enumerate(choices)
+            ]
             if changed == choices:
                 break
             choices = changed

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-import os
 from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
@@ -130,8 +129,8 @@ def _table_arguments(table: SectorTable, variables: NDArray[np.int32]) -> tuple[
 
 
 def _pack(rules: Sequence[Rule], width: int, dtype: type) -> tuple[NDArray[Any], NDArray[Any]]:
-    nodes = np.ones((len(rules), width), dtype=dtype)
-    weights = np.zeros((len(rules), width), dtype=dtype)
+    nodes: NDArray[Any] = np.ones((len(rules), width), dtype=dtype)
+    weights: NDArray[Any] = np.zeros((len(rules), width), dtype=dtype)
     for row, rule in enumerate(rules):
         if dtype is float and not rule.is_real:
             continue  # no sector of the real kernel uses it
@@ -245,13 +244,13 @@ def run(data: ChordData, layout: Layout, threads: int = 1) -> Outcome:
         error, ratio = _extrapolate(rule, null_sums[k])
         truncation[c] += error
         decay[c] = max(decay[c], ratio)
-        noise += rule.noise**2 * float((np.abs(contributions[k]) ** 2).sum())
+        noise = math.hypot(noise, rule.noise * float(np.linalg.norm(contributions[k])))
     total = complex(total)
     return Outcome(
         value=total.real if real_result else total,
         absolute=absolute,
         square=math.sqrt(square),
-        weight_noise=math.sqrt(noise),
+        weight_noise=noise,
         truncation=truncation,
         decay=decay,
         least=least,
@@ -278,8 +277,3 @@ def _halved(layout: Layout, sectors: NDArray[np.int64]) -> tuple[NDArray[np.int3
             rules.append(rules[full].upper_half())
         rows[s, v] = half_row[full]
     return rows, rules
-
-
-def cpu_count() -> int:
-    """Processors this process may use."""
-    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else (os.cpu_count() or 1)

@@ -31,7 +31,7 @@ see.  Tables depend on n alone and are kept.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import cache
 from itertools import combinations
 
 import numpy as np
@@ -88,7 +88,7 @@ class Tree:
         return tuple(steps)
 
 
-@lru_cache(maxsize=None)
+@cache
 def trees(m: int) -> tuple[Tree, ...]:
     """All Cartesian trees on m gaps, in a fixed order; Catalan(m) of them.
 
@@ -96,7 +96,7 @@ def trees(m: int) -> tuple[Tree, ...]:
     [2, 5, 14, 42, 132, 429]
     """
 
-    @lru_cache(maxsize=None)
+    @cache
     def build(a: int, b: int) -> tuple[tuple[tuple[int, int], ...], ...]:
         # every tree on gaps a..b, as pairs (gap, parent or -1)
         if a > b:
@@ -200,7 +200,66 @@ def _choose_pair(m: int, tree: Tree, terms: dict[Run, list[tuple[int, ...]]]) ->
     return min(combinations(variables, 2), key=cost)
 
 
-@lru_cache(maxsize=None)
+class _Masks:
+    """The monomials of the outer variables a sector needs, each one built from an earlier one by one factor."""
+
+    def __init__(self, slot: dict[int, int]) -> None:
+        self.slot = slot
+        self.prev, self.var = [0], [0]
+        self.known: dict[frozenset[int], int] = {frozenset(): 0}
+
+    def index(self, path: tuple[int, ...]) -> int:
+        """The number of the product of ``t_v`` over the outer members of a path."""
+        members = frozenset(self.slot[v] for v in path if v in self.slot)
+        if members not in self.known:
+            # the path without its lowest gap belongs to the parent; build it first
+            head = next(v for v in path if v in self.slot)
+            base = self.index(tuple(v for v in path if v != head))
+            self.known[members] = len(self.prev)
+            self.prev.append(base)
+            self.var.append(self.slot[head])
+        return self.known[members]
+
+
+def _sector_row(m: int, tree: Tree, index: dict[Run, int]) -> dict[str, list[int]]:
+    """One sector as lists of integers, by the names of :class:`SectorTable`."""
+    terms = {run: _run_terms(tree, run) for run in index if run[1] > run[0]}
+    pair = _choose_pair(m, tree, terms)
+    i, j = pair if len(pair) == 2 else (pair[0], -1)
+    outer = [v for v in range(m) if tree.parent[v] >= 0 and v not in pair]
+    masks = _Masks({v: k for k, v in enumerate(outer)})
+    by_kind: list[list[tuple[int, list[tuple[int, int]]]]] = [[], [], [], []]
+    for run, paths in terms.items():
+        encoded = [(masks.index(path), (1 if i in path else 0) + (2 if j in path else 0)) for path in paths]
+        classes = {c for _, c in encoded}
+        on_i, on_j = bool(classes & {1, 3}), bool(classes & {2, 3})
+        kind = (BOTH if on_i else J_ONLY) if on_j else (I_ONLY if on_i else CONST)
+        by_kind[kind].append((index[run], encoded))
+    row: dict[str, list[int]] = {
+        "masks_prev": masks.prev,
+        "masks_var": masks.var,
+        "run_index": [],
+        "run_bounds": [0],
+        "term_start": [0],
+        "term_mask": [],
+        "term_class": [],
+    }
+    for members in by_kind:
+        for position, encoded in members:
+            row["run_index"].append(position)
+            row["term_mask"] += [mask for mask, _ in encoded]
+            row["term_class"] += [c for _, c in encoded]
+            row["term_start"].append(len(row["term_mask"]))
+        row["run_bounds"].append(len(row["run_index"]))
+    order = [*outer, *pair]
+    row["variables"] = [index[tree.subtree[v]] for v in order]
+    row["sibling"] = [
+        next((k for k, u in enumerate(order) if u != v and tree.parent[u] == tree.parent[v]), -1) for v in order
+    ]
+    return row
+
+
+@cache
 def sector_table(n: int) -> SectorTable:
     """The table of all sectors for n punctures (n >= 4), built once per n.
 
@@ -211,65 +270,7 @@ def sector_table(n: int) -> SectorTable:
     m = n - 2
     runs = runs_of(m)
     index = {run: k for k, run in enumerate(runs)}
-    long_runs = [run for run in runs if run[1] > run[0]]
-    all_trees = trees(m)
-    rows: list[dict[str, list[int]]] = []
-    for tree in all_trees:
-        terms = {run: _run_terms(tree, run) for run in long_runs}
-        pair = _choose_pair(m, tree, terms)
-        i = pair[0]
-        j = pair[1] if len(pair) == 2 else -1
-        outer = [v for v in range(m) if tree.parent[v] >= 0 and v not in pair]
-        slot = {v: k for k, v in enumerate(outer)}
-
-        masks: dict[frozenset[int], int] = {frozenset(): 0}
-        prev, var = [0], [0]
-
-        def mask_of(path: tuple[int, ...], masks=masks, prev=prev, var=var, slot=slot) -> int:  # type: ignore[no-untyped-def]
-            members = frozenset(slot[v] for v in path if v in slot)
-            if members not in masks:
-                # the path without its lowest gap belongs to the parent; build it first
-                head = next(v for v in path if v in slot)
-                rest = tuple(v for v in path if v != head)
-                base = mask_of(rest)
-                masks[members] = len(prev)
-                prev.append(base)
-                var.append(slot[head])
-            return masks[members]
-
-        kinds: list[list[tuple[int, list[tuple[int, int]]]]] = [[], [], [], []]
-        for run, paths in terms.items():
-            encoded = [(mask_of(path), (1 if i in path else 0) + (2 if j in path else 0)) for path in paths]
-            classes = {c for _, c in encoded}
-            on_i, on_j = bool(classes & {1, 3}), bool(classes & {2, 3})
-            kind = (BOTH if on_i else J_ONLY) if on_j else (I_ONLY if on_i else CONST)
-            kinds[kind].append((index[run], encoded))
-        bounds, start, term_mask, term_class, run_index = [0], [0], [], [], []
-        for kind in kinds:
-            for position, encoded in kind:
-                run_index.append(position)
-                term_mask += [mask for mask, _ in encoded]
-                term_class += [c for _, c in encoded]
-                start.append(len(term_mask))
-            bounds.append(len(run_index))
-        order = [*outer, *pair]
-        chords = [index[tree.subtree[v]] for v in order]
-        sibling = [
-            next((k for k, u in enumerate(order) if u != v and tree.parent[u] == tree.parent[v]), -1) for v in order
-        ]
-        rows.append(
-            dict(
-                variables=chords,
-                sibling=sibling,
-                masks_prev=prev,
-                masks_var=var,
-                run_index=run_index,
-                run_bounds=bounds,
-                term_start=start,
-                term_mask=term_mask,
-                term_class=term_class,
-            )
-        )
+    rows = [_sector_row(m, tree, index) for tree in trees(m)]
 
     def packed(name: str) -> NDArray[np.int32]:
         width = max(1, max(len(row[name]) for row in rows))
@@ -281,19 +282,13 @@ def sector_table(n: int) -> SectorTable:
 
     counts = np.array([len(row["masks_prev"]) for row in rows], dtype=np.int32)
     counts.setflags(write=False)
+    names = ("variables", "masks_prev", "masks_var", "run_index", "run_bounds", "term_start", "term_mask", "term_class")
     return SectorTable(
         n=n,
         m=m,
         runs=runs,
-        trees=all_trees,
-        variables=packed("variables"),
-        masks_prev=packed("masks_prev"),
-        masks_var=packed("masks_var"),
+        trees=trees(m),
         mask_count=counts,
-        run_index=packed("run_index"),
-        run_bounds=packed("run_bounds"),
-        term_start=packed("term_start"),
-        term_mask=packed("term_mask"),
-        term_class=packed("term_class"),
         sibling=packed("sibling"),
+        **{name: packed(name) for name in names},
     )

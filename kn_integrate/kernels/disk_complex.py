@@ -18,7 +18,7 @@ from .vecmath import atan_quotient, exp, log, sincos
 
 BLOCK = 16
 
-_JIT: Any = dict(cache=True, nogil=True, error_model="numpy", fastmath={"contract"})
+_JIT: Any = {"cache": True, "nogil": True, "error_model": "numpy", "fastmath": {"contract"}}
 
 
 @njit(**_JIT)

@@ -15,7 +15,7 @@ from .vecmath import exp, log
 
 BLOCK = 16  # outer points whose run coefficients are worked out together, so that that part vectorises too
 
-_JIT: Any = dict(cache=True, nogil=True, error_model="numpy", fastmath={"contract"})
+_JIT: Any = {"cache": True, "nogil": True, "error_model": "numpy", "fastmath": {"contract"}}
 
 
 @njit(**_JIT)
@@ -100,7 +100,6 @@ def integrate_chunks(
             for q in range(nj):
                 flat_i[p * nj + q] = ti[p]
                 flat_j[p * nj + q] = tj[q]
-        b0 = run_bounds[s, 0]
         b1 = run_bounds[s, 1]
         b2 = run_bounds[s, 2]
         b3 = run_bounds[s, 3]

@@ -19,7 +19,7 @@ from numba import njit, types
 from numba.extending import intrinsic
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@intrinsic
 def _bits(typingctx: Any, value: Any) -> Any:
     """The 64 bits of a double as a signed integer."""
 
@@ -29,7 +29,7 @@ def _bits(typingctx: Any, value: Any) -> Any:
     return types.int64(types.float64), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@intrinsic
 def _double(typingctx: Any, value: Any) -> Any:
     """The double with these 64 bits."""
 
@@ -52,7 +52,7 @@ _TWO_OVER_PI = 0.6366197723675814
 _TAN_PI_8 = 0.41421356237309503
 _QUARTER_PI = 0.7853981633974483
 
-_JIT: Any = dict(error_model="numpy", fastmath={"contract"})  # fused multiply-add only: NaN keeps its meaning
+_JIT: Any = {"error_model": "numpy", "fastmath": {"contract"}}  # fused multiply-add only: NaN keeps its meaning
 
 
 @njit(**_JIT)

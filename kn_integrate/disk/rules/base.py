@@ -23,7 +23,8 @@ class PoleDistance:
 
     def plus(self, k: int) -> float | complex:
         """``Y + k`` correctly rounded, real where Y is."""
-        return (self.exact + k).value()
+        shifted: Exact = self.exact + k
+        return shifted.value()
 
     @property
     def value(self) -> float | complex:

@@ -7,7 +7,7 @@ In the variable x with ``t = x / (1 + b - b x)`` the circle ``|x| = 1`` passes t
 
     ``f.p. int_0^1 x^(Y-1) G dx = sum_k g_k / (Y + k)``
 
-needs no second piece.  The factors ``1/(Y+k)`` never grow, however deep Y is: this is the best conditioned of the rules.
+needs no second piece.  The factors ``1/(Y+k)`` never grow, however deep Y is: no rule here is better conditioned.
 
 Two clusters that meet in one run, one on either side of its largest gap, may both be at their leftmost point; then the
 run is ``1 - 2/(1 + 2b) + ...``, which vanishes for ``b = 1/2``.  With ``b = size`` (``wide=False``) the circles keep
