@@ -173,6 +173,12 @@ def run(data: ChordData, layout: Layout, threads: int = 1) -> Outcome:
     threads
         Python threads (kernels release the interpreter lock); the result does not depend on it.
     """
+    # overflow to infinity is a finding, not a fault: `Outcome.finite` looks for it
+    with np.errstate(all="ignore"):
+        return _run(data, layout, threads)
+
+
+def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
     table = sector_table(data.n)
     rules = layout.rules
     real_rule = np.array([rule.is_real for rule in rules])
