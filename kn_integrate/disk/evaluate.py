@@ -59,9 +59,9 @@ def _spread(data: ChordData) -> float:
     return float(sum(abs(a) * math.log(b - c + 1) for a, (c, b) in zip(data.run_exponents.tolist(), runs, strict=True)))
 
 
-def _worst_roundoff(data: ChordData, choices: list[Choice], outcome: Outcome) -> float:
+def _worst_roundoff(data: ChordData, layout: Layout, outcome: Outcome) -> float:
     """Bound on the round-off if all errors conspired: every term carries those of its weights and exponents."""
-    noise = sorted((choice.rule().noise for choice in choices), reverse=True)[: data.n - 3]
+    noise = sorted((rule.noise for rule in layout.rules), reverse=True)[: data.n - 3]
     return EPSILON * (8.0 + _spread(data) + sum(noise)) * outcome.absolute
 
 
@@ -104,8 +104,9 @@ def integrate(
     max_points: float = DEFAULT_MAX_POINTS,
     threads: int = 1,
     family: str | None = None,
+    residues: frozenset[int] = frozenset(),
 ) -> Integral:
-    """Integrate to a tolerance; no chord may be on a pole.
+    """Integrate to a tolerance; no chord may be on a pole but those whose residue is taken.
 
     Parameters
     ----------
@@ -119,6 +120,9 @@ def integrate(
         Python threads; the result does not depend on it.
     family
         Use this family of rules for every chord instead of choosing.
+    residues
+        Chords, by their index among the runs, that sit on a pole: the result is the (iterated) residue in their
+        exponents.
 
     Raises
     ------
@@ -126,7 +130,7 @@ def integrate(
         When the first plan already needs more than ``max_points``.
     """
     digits = min(-math.log10(max(rtol, 1e-15)), 15.0) if rtol > 0 else 15.0
-    choices = initial_choices(data, digits, family)
+    choices = initial_choices(data, digits, family, residues)
     best: _Pass | None = None
     spent = 0
     for attempt in range(1, MAX_PASSES + 1):
@@ -148,7 +152,7 @@ def integrate(
                 break
             choices = changed
             continue
-        worst = _worst_roundoff(data, choices, outcome)
+        worst = _worst_roundoff(data, layout, outcome)
         truncation = SAFETY * float(outcome.truncation.sum())
         target = max(atol, rtol * abs(outcome.value))
         likely = min(worst, _likely_roundoff(data, outcome))
@@ -188,7 +192,7 @@ def integrate(
     if best is None:
         return Integral(math.nan, math.inf, math.inf, spent, tuple(choices), MAX_PASSES)
     if not best.settled:
-        worst = _worst_roundoff(data, list(best.choices), best.outcome)
+        worst = _worst_roundoff(data, best.layout, best.outcome)
         rounding, points = _exponent_rounding(data, best.layout, best.outcome, threads)
         spent += points
         best = replace(best, roundoff=min(worst, best.roundoff + rounding), settled=True)
@@ -210,7 +214,7 @@ class _Pass:
 
 def _safer(data: ChordData, choice: Choice, index: int, digits: float) -> Choice:
     """One step towards nodes that keep runs in the right half plane: small circles, then the contour."""
-    if choice.family in ("contour", "overhang") or (choice.family == "radau" and choice.y.is_real):
+    if choice.family in ("contour", "overhang", "residue") or (choice.family == "radau" and choice.y.is_real):
         return choice
     return raised(data, choice, index, digits, "nodes of several chords together met a zero of a run", "small disc")
 
@@ -220,7 +224,7 @@ def _raise_strongest(data: ChordData, choices: list[Choice], digits: float) -> l
     open_chords = [
         c
         for c, choice in enumerate(choices)
-        if choice.y.real < 0.5 and choice.family not in ("disc", "small disc", "contour")
+        if choice.y.real < 0.5 and choice.family not in ("disc", "small disc", "contour", "residue")
     ]
     if not open_chords:
         return choices

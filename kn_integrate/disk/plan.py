@@ -11,7 +11,7 @@ from typing import Any
 import numpy as np
 
 from .chords import ChordData
-from .rules import PoleDistance, Rule, chebyshev_rule, contour_rule, disc_rule, radau_rule
+from .rules import PoleDistance, Rule, chebyshev_rule, contour_rule, disc_rule, radau_rule, residue_rule
 from .rules.base import ellipse_parameter, symmetric_bend
 from .rules.chebyshev import overhang_bend
 from .rules.disc import disc_bend, disc_decay
@@ -49,14 +49,21 @@ class Choice:
         """
         if self.family == "disc" and faced:
             return _build(self.y, self.size, "small disc", _small_count(self.size, self.nodes), 0)
+        if self.family == "residue" and self.level and faced:
+            return _build(self.y, self.size, "small residue", _small_count(self.size, self.nodes), 0)
         return _build(self.y, self.size, self.family, self.nodes, self.segment)
 
     def more(self, extra: int, group: int = 0) -> Choice:
         """The same with more nodes; a contour grows on both parts."""
         if self.family == "contour":
             return replace(self, nodes=self.nodes + 2 * extra, segment=self.segment + extra)
-        step = 2 * extra if self.family in ("ellipse", "disc", "small disc") else extra
+        step = 2 * extra if self.family in ("ellipse", "disc", "small disc", "residue") else extra
         return replace(self, nodes=self.nodes + step)
+
+    @property
+    def level(self) -> int:
+        """The level of the pole that a residue is taken at."""
+        return -int(self.y.exact)
 
     @property
     def total(self) -> int:
@@ -74,6 +81,8 @@ def _build(y: PoleDistance, size: int, family: str, nodes: int, segment: int) ->
         return chebyshev_rule(y, size, nodes, rho=ellipse_rho(size))
     if family in ("disc", "small disc"):
         return disc_rule(y, size, nodes, wide=family == "disc")
+    if family in ("residue", "small residue"):
+        return residue_rule(-int(y.exact), size, nodes, wide=family == "residue")
     return contour_rule(y, size, nodes, segment, FRACTION)
 
 
@@ -183,8 +192,13 @@ def first_count(data: ChordData, index: int, family: str, digits: float) -> tupl
     return max(2 * math.ceil(0.5 * float((work[usable] / rate[usable]).min())) + 2, 10), 0
 
 
-def initial_choices(data: ChordData, digits: float, family: str | None = None) -> list[Choice]:
+def initial_choices(
+    data: ChordData, digits: float, family: str | None = None, residues: frozenset[int] = frozenset()
+) -> list[Choice]:
     """The first plan for this many digits; ``family`` forces one family for every chord it can serve.
+
+    Chords in ``residues`` sit on a pole and get the functional of the residue there; then only sectors whose tree has
+    all of them count, and chords of no such sector get no rule that is ever built.
 
     Every chord starts with its cheapest family.  As long as some sector would amplify round-off beyond the tolerance,
     the chord of that sector that amplifies most is given the next family of its ladder.
@@ -192,23 +206,53 @@ def initial_choices(data: ChordData, digits: float, family: str | None = None) -
     runs = runs_of(data.n - 2)[:-1]
     if family is not None:
         names = [family if family != "radau" or y.real > -1.0 else "contour" for y in data.chords]
-        return [_choice(data, k, name, digits, "asked for by name") for k, name in enumerate(names)]
+        return [
+            _residue_choice(data, k, digits) if k in residues else _choice(data, k, name, digits, "asked for by name")
+            for k, name in enumerate(names)
+        ]
     ladders = [ladder(y) for y in data.chords]
     grade = [0] * len(runs)
     strength = np.array([amplification(y, steps[0]) for y, steps in zip(data.chords, ladders, strict=True)])
-    variables = sector_table(data.n).variables
+    strength[list(residues)] = 0.5
+    variables = sector_table(data.n).variables[sectors_with(data.n, residues)]
     budget = 14.5 - digits  # a decade for the error to stay below the tolerance, and a bit for sums of many terms
     for _ in range(3 * len(runs)):
         totals = strength[variables].sum(axis=1)
         row = variables[int(totals.argmax())]
-        movable = [c for c in row.tolist() if ladders[c][grade[c]] != "disc" and data.chords[c].real < 0]
+        movable = [
+            c for c in row.tolist() if ladders[c][grade[c]] != "disc" and data.chords[c].real < 0 and c not in residues
+        ]
         if totals.max() <= budget or not movable:
             break
         c = max(movable, key=lambda c: strength[c])
         grade[c] += 1
         strength[c] = amplification(data.chords[c], ladders[c][grade[c]])
     why = ["cheapest", "raised once, round-off", "raised twice, round-off"]
-    return [_choice(data, k, ladders[k][grade[k]], digits, why[grade[k]]) for k in range(len(runs))]
+    return [
+        _residue_choice(data, k, digits)
+        if k in residues
+        else _choice(data, k, ladders[k][grade[k]], digits, why[grade[k]])
+        for k in range(len(runs))
+    ]
+
+
+def sectors_with(n: int, chords: frozenset[int]) -> np.ndarray[Any, Any]:
+    """The sectors whose tree has all these chords."""
+    variables = sector_table(n).variables
+    keep = np.ones(len(variables), dtype=bool)
+    for c in chords:
+        keep &= (variables == c).any(axis=1)
+    return np.flatnonzero(keep)
+
+
+def _residue_choice(data: ChordData, index: int, digits: float) -> Choice:
+    run = runs_of(data.n - 2)[index]
+    y, size = data.chords[index], run[1] - run[0] + 1
+    level = -int(y.exact)
+    nodes = 1
+    if level:
+        nodes = max(first_count(data, index, "disc", digits)[0], 2 * level + 8)
+    return Choice(run, y, size, "residue", min(nodes, MAX_NODES), 0, f"residue at level {level}")
 
 
 def _choice(data: ChordData, index: int, family: str, digits: float, reason: str) -> Choice:
@@ -228,27 +272,39 @@ def raised(data: ChordData, choice: Choice, index: int, digits: float, reason: s
 
 
 def layout_of(n: int, choices: Sequence[Choice]) -> Layout:
-    """Rules and rows for all sectors: discs that face another disc take their small circle."""
+    """Rules and rows for all sectors: discs that face another disc take their small circle.
+
+    With residues among the choices, only the sectors that have all their chords.
+    """
     table = sector_table(n)
-    rules = [choice.rule() for choice in choices]
-    chord = list(range(len(choices)))
-    rows = table.variables
-    is_disc = np.array([choice.family == "disc" for choice in choices])
+    residues = frozenset(c for c, choice in enumerate(choices) if choice.family == "residue")
+    sectors = sectors_with(n, residues)
+    used = set(np.unique(table.variables[sectors]).tolist())
+    chord = sorted(used)
+    rules = [choices[c].rule() for c in chord]
+    place = np.full(len(choices), -1, dtype=np.int32)
+    place[chord] = np.arange(len(chord))
+    rows = place[table.variables]
+    is_disc = np.array(
+        [choice.family == "disc" or (choice.family == "residue" and choice.level > 0) for choice in choices]
+    )
     if is_disc.any():
         on_disc = is_disc[table.variables]
         other = np.take_along_axis(on_disc, np.maximum(table.sibling, 0), axis=1) & (table.sibling >= 0)
         faced = on_disc & other
         if faced.any():
-            rows = table.variables.copy()
-            for c in np.unique(table.variables[faced]).tolist():
+            for c in sorted(used & set(np.unique(table.variables[faced]).tolist())):
                 rows[faced & (table.variables == c)] = len(rules)
                 rules.append(choices[c].rule(faced=True))
                 chord.append(c)
-    return Layout(tuple(rules), np.array(chord), rows)
+    return Layout(tuple(rules), np.array(chord), rows, sectors)
 
 
 def plan_table(choices: Sequence[Choice]) -> list[dict[str, Any]]:
-    """The plan in plain values, one entry a chord."""
+    """The plan in plain values, one entry for each chord that has a rule."""
+    n = max(choice.chord[1] for choice in choices) + 3
+    residues = frozenset(c for c, choice in enumerate(choices) if choice.family == "residue")
+    used = set(np.unique(sector_table(n).variables[sectors_with(n, residues)]).tolist())
     return [
         {
             "positions": list(range(choice.chord[0] + 1, choice.chord[1] + 3)),
@@ -258,5 +314,6 @@ def plan_table(choices: Sequence[Choice]) -> list[dict[str, Any]]:
             "amplification": f"{choice.rule().amplification:.3g}",
             "reason": choice.reason,
         }
-        for choice in choices
+        for c, choice in enumerate(choices)
+        if c in used
     ]

@@ -73,22 +73,26 @@ class Layout:
         The chord each rule is for; one chord may have several rules.
     rows : (S, V) int32
         Index into ``rules`` for each variable of each sector, in the order of ``SectorTable.variables``.
+    sectors : array
+        The sectors that count.
     """
 
     rules: tuple[Rule, ...]
     chord: NDArray[np.int64]
     rows: NDArray[np.int32]
+    sectors: NDArray[np.int64]
 
     @property
     def points(self) -> float:
         """Integrand evaluations, conjugate halves not yet taken off."""
         counts = np.array([rule.count for rule in self.rules], dtype=np.float64)
-        return float(counts[self.rows].prod(axis=1).sum())
+        return float(counts[self.rows[self.sectors]].prod(axis=1).sum())
 
 
 def simple_layout(n: int, rules: Sequence[Rule]) -> Layout:
     """One rule per chord."""
-    return Layout(tuple(rules), np.arange(len(rules)), sector_table(n).variables)
+    table = sector_table(n)
+    return Layout(tuple(rules), np.arange(len(rules)), table.variables, np.arange(table.count))
 
 
 def _chunks(
@@ -182,10 +186,8 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
     table = sector_table(data.n)
     rules = layout.rules
     real_rule = np.array([rule.is_real for rule in rules])
-    if data.is_real:
-        complex_sector = ~real_rule[layout.rows].all(axis=1)
-    else:
-        complex_sector = np.ones(table.count, dtype=bool)
+    chosen = layout.sectors
+    complex_sector = ~real_rule[layout.rows[chosen]].all(axis=1) if data.is_real else np.ones(len(chosen), dtype=bool)
     width = max(rule.count for rule in rules)
     counts = np.array([rule.count for rule in rules], dtype=np.int64)
     real_result = data.is_real and all(y.is_real for y in data.chords)
@@ -198,7 +200,7 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
     contributions = np.zeros((len(rules), width), dtype=complex)
 
     for is_complex in (False, True):
-        sectors = np.flatnonzero(complex_sector == is_complex)
+        sectors = chosen[complex_sector == is_complex]
         if not len(sectors):
             continue
         variables, all_rules, all_counts = layout.rows, list(rules), counts

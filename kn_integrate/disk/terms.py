@@ -7,12 +7,12 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any, Protocol
 
-from ..errors import Status
+from ..errors import Status, WorkLimitError
 from ..estimate import Estimate, judge
 from ..exact import Exact
 from .chords import ChordData, chord_data
 from .evaluate import DEFAULT_MAX_POINTS, Integral, integrate
-from .plan import initial_choices, layout_of
+from .plan import Choice, initial_choices, layout_of
 from .run import EPSILON
 
 MAX_ROUNDS = 4
@@ -62,8 +62,9 @@ def integrate_terms(
     max_points: float | None = None,
     threads: int = 1,
     family: str | None = None,
+    residues: frozenset[int] = frozenset(),
 ) -> Estimate:
-    """Quadrature of ``sum_k c_k I(A_k)``; no chord of any term may be on a pole.
+    """Quadrature of ``sum_k c_k I(A_k)``; no chord of any term may be on a pole but those in ``residues``.
 
     Parameters
     ----------
@@ -79,6 +80,8 @@ def integrate_terms(
         Python threads; the bits of the result do not depend on it.
     family
         Use this family of rules for every chord instead of choosing per chord.
+    residues
+        Chords (by index) on a pole in every term: the sum of the iterated residues there.
 
     Raises
     ------
@@ -88,11 +91,16 @@ def integrate_terms(
     limit = DEFAULT_MAX_POINTS if max_points is None else max_points
     parts = [_Part(term.coefficient.value(), chord_data(n, term.pairs)) for term in terms]
     single = len(parts) == 1
+    options: dict[str, Any] = {"threads": threads, "family": family, "residues": residues}
+    if not single:
+        first = sum(layout_of(n, _plan(part.data, rtol, family, residues)).points for part in parts)
+        if first > limit:
+            raise WorkLimitError(first, limit, "points", "raise max_points=, relax rtol=, or use method='kz'")
     spent = 0
     done: list[_Part] = []
     for part in parts:
         share = atol / abs(part.factor) if single else 0.0
-        result = integrate(part.data, rtol, share, max_points=limit - spent, threads=threads, family=family)
+        result = integrate(part.data, rtol, share, max_points=limit - spent, **options)
         spent += result.points
         done.append(_Part(part.factor, part.data, result))
     value, truncation, roundoff, moduli = _sum_of(done)
@@ -107,14 +115,15 @@ def integrate_terms(
             assert part.result is not None
             size = abs(part.factor)
             share = 0.5 * goal / (len(done) * size)
-            if part.result.truncation <= share or part.result.error <= 2.0 * part.result.roundoff or spent >= limit:
+            if part.result.truncation <= share or part.result.error <= 2.0 * part.result.roundoff:
                 better.append(part)
                 continue
-            result = (
-                integrate(part.data, 1e-15, share, max_points=max(limit - spent, 1.0), threads=threads, family=family)
-                if limit - spent > part.result.points
-                else part.result
-            )
+            finer = max(1e-15, share / max(abs(part.result.value), share))
+            try:
+                result = integrate(part.data, finer, share, max_points=limit - spent, **options)
+            except WorkLimitError:
+                better.append(part)
+                continue
             spent += result.points
             better.append(_Part(part.factor, part.data, min(part.result, result, key=lambda r: r.error)))
         if all(new.result is old.result for new, old in zip(better, done, strict=True)):
@@ -135,7 +144,11 @@ def integrate_terms(
             if part.result is not None
         ],
     }
-    return Estimate(value, error, status, "quadrature", spent, rtol, atol, None, details)
+    return Estimate(value, error, status, "residue" if residues else "quadrature", spent, rtol, atol, None, details)
+
+
+def _plan(data: ChordData, rtol: float, family: str | None, residues: frozenset[int] = frozenset()) -> list[Choice]:
+    return initial_choices(data, digits_of(rtol), family, residues)
 
 
 def predict(n: int, terms: Sequence[Term], rtol: float, family: str | None = None) -> tuple[float, float]:
@@ -143,7 +156,7 @@ def predict(n: int, terms: Sequence[Term], rtol: float, family: str | None = Non
     points = seconds = 0.0
     for term in terms:
         data = chord_data(n, term.pairs)
-        layout = layout_of(n, initial_choices(data, digits_of(rtol), family))
+        layout = layout_of(n, _plan(data, rtol, family))
         points += layout.points
         kind = "real" if data.is_real and all(rule.is_real for rule in layout.rules) else "complex"
         seconds += layout.points * SECONDS_PER_POINT[kind]

@@ -86,7 +86,6 @@ def choose_circle(places: Sequence[float], digits: float, least: float = 0.0) ->
     """
     inside = max((p for p in places if p <= least), default=0.0)
     outside = min((p for p in places if p > least), default=1.0)
-    outside = min(outside, 1.0)
     radius = max(0.3 * outside, math.sqrt(inside * outside))
     quality = max(radius / outside, inside / radius)
     if quality > 0.8:

@@ -1,0 +1,57 @@
+r"""Residue functionals: the Taylor coefficient that stands at a pole of ``int_0^1 t^(Y-1) F(t) dt``.
+
+Near ``Y = -N`` the integral is ``F_N / (Y + N)`` plus something regular, ``F_N`` the coefficient of ``t^N`` in F.  So
+the residue of an integral in a chord exponent is the same sum over sectors, restricted to those whose tree has the
+chord, with the weights of its variable replaced by a Taylor functional: for N = 0 the single node t = 0, else the
+trapezoidal rule on the circle of the disc rule.  No limit is taken anywhere.
+
+In the variable x with ``t = x/(1+b-bx)``: ``F_N`` is the coefficient of ``x^N`` in ``(1+b) (1+b-bx)^(N-1) F``, because
+residues do not depend on the variable.
+
+Source: Cauchy's formula by the trapezoidal rule, common practice.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from .base import NullGroup, Rule, bent
+from .disc import disc_bend, disc_decay
+
+
+def residue_rule(level: int, size: int, count: int, wide: bool = True) -> Rule:
+    """The functional ``F -> F_N`` for ``N = level``.
+
+    Parameters
+    ----------
+    level
+        N >= 0.
+    size
+        Number of gaps in the cluster of the chord.
+    count
+        Number of nodes on the circle, even and above ``level``; 1 is enough for level 0.
+    wide
+        The large circle, or the one for clusters that face another cluster on a circle.
+    """
+    if level == 0:
+        nothing = np.zeros((4, 1))
+        return Rule("residue", np.zeros(1), np.ones(1), nothing, (NullGroup(0, 0.0, 1.0),), 1.0)
+    bend = disc_bend(size, wide)
+    angle = 2.0 * math.pi * (np.arange(count) + 0.5) / count
+    x = np.exp(1j * angle)
+    fourier = np.exp(-1j * np.outer(np.arange(count), angle)) / count
+    t, weights = bent(x, fourier[level], 1.0 - level, bend)
+    # coefficient count + N is taken for coefficient N
+    _, nulls = bent(x, fourier[[-1, -2, -3, -4]], 1.0 - level, bend)
+    return Rule(
+        kind="residue",
+        nodes=t,
+        weights=weights,
+        nulls=nulls,
+        groups=(NullGroup(0, disc_decay(size, wide), level + 1.0),),
+        amplification=float(np.abs(weights).sum()),
+        conjugate_pairs=True,
+        parameters=(("nodes", count), ("level", level), ("wide", wide)),
+    )
