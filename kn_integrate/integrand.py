@@ -335,7 +335,7 @@ def parke_taylor(*labels: int) -> Integrand:
     Examples
     --------
     >>> print(parke_taylor(1, 3, 2))
-    -z12^-1*z13^-1*z23^-1
+    z12^-1*z13^-1*z23^-1
     >>> print(parke_taylor(1, 2) * parke_taylor(3, 4))
     z12^-2*z34^-2
     """
@@ -448,7 +448,7 @@ class _Parser:
                 # "1/2j" is 1/(2j) by the rules of division and j/2 in the notation for numbers: refuse both readings
                 raise self.error(start, "brackets around an imaginary divisor, or the unit in front: 1j/2")
             right = self.factor()
-            result = self.guarded(position, lambda a, b=right: a * b if operator == "*" else a / b, result)
+            result = self.guarded(position, lambda a, b=right, times=operator == "*": a * b if times else a / b, result)
         return result
 
     def factor(self) -> Integrand:
