@@ -16,22 +16,26 @@ __version__ = "0.1.0"
 _HOMES: dict[str, tuple[str, ...]] = {
     "errors": ("InputError", "KNError", "NotAvailableError", "PoleError", "Status", "WorkLimitError"),
     "estimate": ("Estimate",),
-    "kinematics": ("Mandelstams", "random_momenta"),
+    "kinematics": ("Mandelstams",),
+    "momenta": ("random_momenta",),
     "integrand": ("Integrand", "monomial", "parke_taylor", "parse_integrand"),
     "exponents": ("DiskExponents", "SphereExponents"),
     "integrals": ("DiskIntegral", "SphereIntegral"),
-    "api": ("disk_integral",),
+    "api": ("disk_integral", "residue"),
+    "poles": ("LaurentSeries", "laurent_series", "plus_i_epsilon"),
 }
 _MODULE_OF = {name: module for module, names in _HOMES.items() for name in names}
 
 if TYPE_CHECKING:
-    from .api import disk_integral
+    from .api import disk_integral, residue
     from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
     from .estimate import Estimate
     from .exponents import DiskExponents, SphereExponents
     from .integrals import DiskIntegral, SphereIntegral
     from .integrand import Integrand, monomial, parke_taylor, parse_integrand
-    from .kinematics import Mandelstams, random_momenta
+    from .kinematics import Mandelstams
+    from .momenta import random_momenta
+    from .poles import LaurentSeries, laurent_series, plus_i_epsilon
 
 __all__ = [
     "DiskExponents",
@@ -40,6 +44,7 @@ __all__ = [
     "InputError",
     "Integrand",
     "KNError",
+    "LaurentSeries",
     "Mandelstams",
     "NotAvailableError",
     "PoleError",
@@ -49,10 +54,13 @@ __all__ = [
     "WorkLimitError",
     "__version__",
     "disk_integral",
+    "laurent_series",
     "monomial",
     "parke_taylor",
     "parse_integrand",
+    "plus_i_epsilon",
     "random_momenta",
+    "residue",
 ]
 
 

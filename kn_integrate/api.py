@@ -2,22 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Sequence
 from typing import Any
 
-from .dispatch.engines import evaluate
-from .dispatch.integral import Shift, TermsAt, integrate_family, shifted
-from .dispatch.request import Request, make_request
-from .dispatch.shifts import Chord, chord_exponents, chords_of, pair_order, pair_shift
-from .errors import InputError
+from .dispatch.family import disk_family
+from .dispatch.integral import integrate_family
+from .dispatch.request import make_request
+from .dispatch.shifts import chord_exponents
 from .estimate import Estimate
-from .exact import Exact
 from .exponents import DiskExponents
-from .integrals import DiskIntegral, DiskTerm
-from .integrand import Integrand, parse_integrand
+from .integrals import DiskIntegral
+from .integrand import Integrand
 from .kinematics import Mandelstams
-
-ONE = Exact(1)
 
 
 def disk_integral(
@@ -83,9 +79,9 @@ def disk_integral(
     3.1415926536
     """
     request = make_request(rtol=rtol, atol=atol, digits=digits, method=method, max_points=max_points, threads=threads)
-    family = _Family.of(kin, f, ordering)
+    family = disk_family(kin, f, ordering)
     return integrate_family(
-        family.n, family.terms_at, request, invariants=family.invariants(), name=family.name, varying=family.varying
+        family.n, family.terms_at, request, invariants=family.invariants, name=family.name, varying=family.varying
     )
 
 
@@ -106,7 +102,7 @@ def predict(
     from .disk.terms import predict as predict_quadrature
 
     request = make_request(rtol=rtol)
-    family = _Family.of(kin, f, ordering)
+    family = disk_family(kin, f, ordering)
     terms = family.terms_at({})
     facts: dict[str, Any] = {"n": family.n, "terms": len(terms)}
     poles = [
@@ -126,94 +122,68 @@ def predict(
     return facts
 
 
-class _Family:
-    """An integral with its neighbourhood in kinematic space."""
+def residue(
+    kin: Mandelstams | DiskExponents,
+    f: Any = None,
+    g: Any = None,
+    *,
+    channel: Any,
+    level: Any = 0,
+    ordering: Sequence[int] | None = None,
+    hold: Any = None,
+    rtol: float | None = None,
+    atol: float = 0,
+    digits: int | None = None,
+    max_points: float | None = None,
+    threads: int = 1,
+) -> Estimate:
+    """The residue of a disk or sphere integral at a pole of a channel (or of several compatible ones).
 
-    def __init__(
-        self,
-        n: int,
-        ordering: tuple[int, ...],
-        terms_at: TermsAt,
-        invariants: Mapping[Chord, Exact] | None,
-        varying: bool,
-    ) -> None:
-        self.n = n
-        self.ordering = ordering
-        self.terms_at = terms_at
-        self._invariants = invariants
-        self.varying = varying
+    With ``Y = X + (integer from the integrand)`` the exponent of the channel's boundary divisor, level N is the pole at
+    ``Y = -N``; in a sum of monomials the integer is the least one, so that level 0 is the first pole met.  The
+    residue is in the planar invariant X of the channel.
 
-    def name(self, chord: Chord) -> tuple[int, ...]:
-        """The labels of a chord's channel, sorted."""
-        return tuple(sorted(self.ordering[chord[0] - 1 : chord[1]]))
+    Parameters
+    ----------
+    kin
+        The point; its X of the channel is ignored (it is moved onto the pole), the other planar invariants of the
+        ordering are kept.
+    f
+        The integrand, as for :func:`disk_integral`.
+    g
+        The right-moving integrand: given, the residue is that of the sphere integral J(f|g).
+    channel
+        Labels such as ``(1, 2)``, or a list of compatible channels for the iterated residue.
+    level
+        N >= 0, or one for each channel.
+    ordering
+        Of the disk integral.
+    hold
+        n(n-3)/2 - 1 channels to keep instead of the planar ones (any sets of labels).
+    rtol, atol, digits, max_points, threads
+        As for :func:`disk_integral`.
 
-    def invariants(self) -> Mapping[Chord, Exact] | None:
-        """The planar invariant of every chord; None when there are only exponents."""
-        return self._invariants
+    Raises
+    ------
+    InputError
+        For a channel that is not planar in the ordering, channels that cross, levels below 0.
+    PoleError
+        When a further compatible channel sits on a pole at that point.
 
-    @staticmethod
-    def of(kin: Any, f: Any, ordering: Sequence[int] | None) -> _Family:
-        if isinstance(kin, DiskExponents):
-            if f is not None:
-                raise InputError("f", repr(f), "no integrand beside DiskExponents, which contain it")
-            if ordering is not None:
-                raise InputError("ordering", repr(ordering), "none beside DiskExponents: punctures stand in order")
-            terms: Sequence[Any] = [DiskTerm(ONE, kin.pairs)]
-            n = kin.n
-            return _Family(n, tuple(range(1, n + 1)), lambda by: shifted(n, terms, by), None, False)
-        if not isinstance(kin, Mandelstams):
-            raise InputError("kin", type(kin).__name__, "Mandelstams or DiskExponents")
-        n = kin.n
-        if f is None:
-            raise InputError("f", "None", "an integrand, such as parke_taylor(1, 2, ..., n)")
-        if isinstance(f, str):
-            f = parse_integrand(f)
-        if callable(f) and not isinstance(f, (Integrand, DiskIntegral)):
-            first = DiskIntegral(n, _integrand_of(f, kin), ordering)
-            order = first.ordering
+    Examples
+    --------
+    >>> import kn_integrate as kn
+    >>> kin = kn.Mandelstams.from_planar(4, {(1, 2): "1/3", (2, 3): "1/2"})
+    >>> kn.residue(kin, kn.parke_taylor(1, 2, 3, 4), channel=(1, 2), level=1).value  # 1 - s23
+    0.5
+    """
+    if g is not None:
+        from .sphere.residues import residue as sphere_residue
 
-            def terms_at(by: Shift) -> Sequence[Any]:
-                point = moved(kin, order, by)
-                return DiskIntegral(n, _integrand_of(f, point), order).terms(point)
-
-            return _Family(n, order, terms_at, _invariants(kin, order), True)
-        if isinstance(f, DiskIntegral):
-            if ordering is not None and tuple(ordering) != f.ordering:
-                raise InputError("ordering", repr(tuple(ordering)), f"the ordering of the integral, {f.ordering}")
-            spec = f
-        elif isinstance(f, Integrand):
-            spec = DiskIntegral(n, f, ordering)
-        else:
-            raise InputError(
-                "f", type(f).__name__, "an Integrand, its text, a DiskIntegral or a function of kinematics"
-            )
-        fixed = spec.terms(kin)
-        return _Family(n, spec.ordering, lambda by: shifted(n, fixed, by), _invariants(kin, spec.ordering), False)
-
-
-def _integrand_of(f: Callable[[Mandelstams], Integrand], kin: Mandelstams) -> Integrand:
-    found = f(kin)
-    if not isinstance(found, Integrand):
-        raise InputError(
-            "f", f"a function that returned {type(found).__name__}", "a function that returns an Integrand"
+        return sphere_residue(
+            kin, f, g, channel=channel, level=level, rtol=rtol, atol=atol, digits=digits, max_points=max_points
         )
-    return found
+    from .poles import disk_residue
 
-
-def _invariants(kin: Mandelstams, ordering: Sequence[int]) -> dict[Chord, Exact]:
-    return {(i, j): kin.channel(tuple(ordering[i - 1 : j])) for i, j in chords_of(kin.n)}
-
-
-def moved(kin: Mandelstams, ordering: Sequence[int], by: Shift) -> Mandelstams:
-    """The point with planar invariants of an ordering moved, all other planar invariants and the row sums held."""
-    if not by:
-        return kin
-    n = kin.n
-    pairs = {}
-    for (i, j), h in zip(pair_order(n), pair_shift(n, by), strict=True):
-        a, b = ordering[i - 1], ordering[j - 1]
-        pairs[a, b] = kin.pair(a, b) + h
-    return kin.with_pairs(pairs)
-
-
-__all__ = ["Request", "disk_integral", "evaluate", "moved", "predict"]
+    request = make_request(rtol=rtol, atol=atol, digits=digits, max_points=max_points, threads=threads)
+    return disk_residue(kin, f, channel=channel, level=level, ordering=ordering, hold=hold, request=request)

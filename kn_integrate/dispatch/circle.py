@@ -20,7 +20,6 @@ from typing import Any
 
 import mpmath
 
-from ..errors import InputError
 from ..estimate import Estimate
 from ..exact import Exact, read
 from .shifts import Chord
@@ -28,20 +27,19 @@ from .shifts import Chord
 
 @dataclass(frozen=True)
 class Circle:
-    """A circle in h about 0 with the poles sorted into those inside and those outside.
+    """A circle in h about 0.
 
     Attributes
     ----------
     radius : float
     count : int
         Points on it, even.
-    inside, outside : float
-        Largest |h| of a pole inside (0 when they all sit at the centre), smallest |h| of one outside.
+    outside : float
+        Smallest |h| of a pole off the centre.
     """
 
     radius: float
     count: int
-    inside: float
     outside: float
 
 
@@ -54,6 +52,7 @@ class Laurent:
     errors: tuple[float, ...]
     evaluations: int
     circle: Circle
+    symmetric: bool
 
     def coefficient(self, k: int) -> tuple[Any, float]:
         """Value and error bound of ``c_k``."""
@@ -76,22 +75,22 @@ def pole_places(
     return found
 
 
-def choose_circle(places: Sequence[float], digits: float, least: float = 0.0) -> Circle:
-    """A radius between the poles to enclose (|h| <= least) and the next ones, and how many points it takes.
+def choose_circle(places: Sequence[float], digits: float, orders: int = 0) -> Circle:
+    """A radius inside the nearest pole off the centre, and how many points it takes.
 
-    Raises
-    ------
-    InputError
-        When poles inside and outside are too close for any circle.
+    Parameters
+    ----------
+    places
+        |h| of the poles on the line; those at 0 are what the circle is for.
+    digits
+        Wanted digits, relative to the largest value on the circle.
+    orders
+        Largest |k| of the coefficients wanted; high ones keep more digits on a larger circle.
     """
-    inside = max((p for p in places if p <= least), default=0.0)
-    outside = min((p for p in places if p > least), default=1.0)
-    radius = max(0.3 * outside, math.sqrt(inside * outside))
-    quality = max(radius / outside, inside / radius)
-    if quality > 0.8:
-        raise InputError("kinematics", f"poles at distance {inside:.3g} and {outside:.3g}", "a point off the poles")
-    count = 2 * math.ceil(0.5 * (digits + 1.5) * math.log(10.0) / -math.log(quality))
-    return Circle(radius, max(count, 16), inside, outside)
+    outside = min((p for p in places if p > 0), default=1.0)
+    fraction = 0.3 if orders <= 3 else 0.5
+    count = 2 * math.ceil(0.5 * (digits + 1.5) * math.log(10.0) / -math.log(fraction)) + 2 * orders
+    return Circle(fraction * outside, max(count, 16), outside)
 
 
 def laurent(
@@ -139,7 +138,7 @@ def laurent(
         return sum((values[j] * root[-k * (2 * j + 1) % (2 * count)] for j in range(count)), ctx.mpc(0)) / count
 
     # what lies in the middle of the spectrum tells the size of the aliases, carried on at the theoretical rate
-    quality = max(circle.radius / circle.outside, circle.inside / circle.radius)
+    quality = circle.radius / circle.outside
     middle = max(float(abs(scaled(k))) for k in (half - 1, half, -half + 1))
     epsilon = 10.0 ** -min(digits, 300)
     found, bounds = [], []
@@ -149,4 +148,4 @@ def laurent(
         scale = radius**-k
         found.append((value.real if symmetric else value) * scale)
         bounds.append((error + alias) * float(scale))
-    return Laurent(low, tuple(found), tuple(bounds), evaluations, circle)
+    return Laurent(low, tuple(found), tuple(bounds), evaluations, circle, symmetric)

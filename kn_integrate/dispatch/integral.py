@@ -100,7 +100,7 @@ def integrate_family(
     """
     terms = terms_at({})
     probe: Shift = {chord: Exact(Fraction(1, 97 + 2 * k)) for k, chord in enumerate(chords_of(n))} if varying else {}
-    exponents = _exponents(n, terms_at(probe) if varying else terms, probe)
+    exponents = exponents_of(n, terms_at(probe) if varying else terms, probe)
     if invariants is None:
         invariants = {chord: ys[0] for chord, ys in exponents.items() if ys}
     point = _Point(n, terms_at, exponents, invariants, name or (lambda chord: tuple(range(chord[0], chord[1] + 1))))
@@ -129,7 +129,7 @@ class _Point:
         return PoleError(self.name(chord), level, self.invariants.get(chord))
 
 
-def _exponents(n: int, terms: Sequence[Term], probe: Shift) -> dict[Chord, list[Exact]]:
+def exponents_of(n: int, terms: Sequence[Term], probe: Shift) -> dict[Chord, list[Exact]]:
     """The different exponents Y of every chord over the terms, at the unmoved point."""
     found: dict[Chord, set[Exact]] = {chord: set() for chord in chords_of(n)}
     for term in terms:
@@ -201,7 +201,8 @@ def along(
     """Laurent coefficients along a line through the point; ``speed`` is the change of each planar invariant."""
     digits = request.digits or 15
     want = digits + 1.0 if request.digits else min(15.5, 1.0 - math.log10(request.rtol))
-    circle = choose_circle(pole_places(exponents, speed), want)
+    low = -(n - 2) if low is None else low
+    circle = choose_circle(pole_places(exponents, speed), want, max(abs(low), abs(high)))
     inner = replace(
         request,
         rtol=max(0.1 * request.rtol, 2e-15) if request.digits is None else request.rtol,
@@ -211,7 +212,7 @@ def along(
     return laurent(
         lambda h: evaluate(n, terms_at({chord: v * h for chord, v in speed.items()}), inner),
         circle,
-        -(n - 2) if low is None else low,
+        low,
         high,
         real,
         digits,

@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from functools import cache
 
+from ..channels import pair_order
 from ..exact import ZERO, Exact
 
 Chord = tuple[int, int]  # first and last position of the cluster, 1 <= i < j <= n - 1, not (1, n - 1)
@@ -23,12 +24,6 @@ def chords_of(n: int) -> tuple[Chord, ...]:
     ((1, 2), (2, 3), (3, 4), (1, 3), (2, 4))
     """
     return tuple((i, i + size - 1) for size in range(2, n - 1) for i in range(1, n - size + 1))
-
-
-@cache
-def pair_order(n: int) -> tuple[tuple[int, int], ...]:
-    """The order in which pair exponents are kept."""
-    return tuple((i, j) for i in range(1, n) for j in range(i + 1, n + 1))
 
 
 @cache
