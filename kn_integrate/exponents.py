@@ -111,7 +111,7 @@ class DiskExponents:
         if absent:
             raise InputError("chords", f"nothing for {absent[0]}", f"all {len(chords)} chords of the {points}-gon")
         # sum of the exponents inside the cluster of labels i..j-1; the whole side (1, n) has Y = 0
-        inside = {chord: given[chord] - (chord[1] - chord[0] - 1) for chord in chords}
+        inside: dict[Pair, Exact] = {chord: given[chord] - (chord[1] - chord[0] - 1) for chord in chords}
         inside[1, points] = Exact(2 - points)
 
         def cluster(i: int, j: int) -> Exact:
@@ -243,10 +243,8 @@ def _read_powers(n: int, given: Any, field: str) -> tuple[int, ...]:
     if not isinstance(given, Mapping):
         raise InputError(field, shown(given), "a mapping {(i, j): integer}")
     for key, raw in given.items():
-        if not isinstance(key, tuple) or len(key) != 2:
-            raise InputError(field, f"the key {shown(key)}", "pairs of labels (i, j) as keys")
-        i, j = (read_integer(label, f"{field} {key}", "a label") for label in key)
-        if not 1 <= i < j <= n:
-            raise InputError(field, f"the key {shown(key)}", f"labels i < j from 1 to {n}")
-        powers[pair_index(n)[i, j]] = read_integer(raw, f"{field} ({i},{j})")
+        pair = read_pair(key, n, field)
+        if tuple(key) != pair:
+            raise InputError(field, f"the key {shown(key)}", "labels i < j")
+        powers[pair_index(n)[pair]] = read_integer(raw, f"{field} {dotted(pair)}")
     return tuple(powers)

@@ -14,17 +14,14 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
-from typing import Any, TypeAlias
+from typing import Any
 
-from .channels import Channel, Pair, dotted, pair_index, pair_order, read_count, read_ordering
+from .channels import Channel, Pair, pair_index, pair_order, read_count, read_ordering
 from .errors import InputError
-from .exact import ONE, ZERO, Exact
-from .exponents import DiskExponents, SphereExponents
+from .exact import ZERO, Exact
 from .integrand import Integrand, Powers, monomial, parse_integrand
 from .kinematics import Mandelstams
 from .ratios import shown
-
-Kinematics: TypeAlias = Mandelstams
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,7 +54,7 @@ class _Monomial:
 def _prepare(n: int, f: Integrand, ordering: Channel) -> tuple[_Monomial, ...]:
     places = {label: k for k, label in enumerate(ordering, start=1)}
     index = pair_index(n)
-    found: dict[tuple[tuple[int, ...], tuple[int, ...]], Exact] = {}
+    found = []
     for term in f.terms:
         shifts = [0] * len(pair_order(n))
         degrees = [0] * n
@@ -67,9 +64,9 @@ def _prepare(n: int, f: Integrand, ordering: Channel) -> tuple[_Monomial, ...]:
             degrees[i - 1] += power
             degrees[j - 1] += power
             negative ^= places[i] < places[j] and power % 2 == 1
-        key = (tuple(shifts), tuple(degrees))
-        found[key] = found.get(key, ZERO) + (-term.coefficient if negative else term.coefficient)
-    return tuple(_Monomial(c, shifts, degrees) for (shifts, degrees), c in found.items() if c)
+        # different monomials have different shifts, so there is nothing to merge
+        found.append(_Monomial(-term.coefficient if negative else term.coefficient, tuple(shifts), tuple(degrees)))
+    return tuple(found)
 
 
 def _read_integrand(f: Any, n: int, field: str) -> Integrand:
@@ -146,7 +143,7 @@ class DiskIntegral:
         found: tuple[_Monomial, ...] = self._monomials  # type: ignore[attr-defined]
         return found
 
-    def terms(self, kin: Kinematics) -> tuple[DiskTerm, ...]:
+    def terms(self, kin: Mandelstams) -> tuple[DiskTerm, ...]:
         """The absolute-value terms at a kinematic point.
 
         Equal exponents are merged and terms that vanish are left out; an empty tuple is the zero integral.
@@ -169,7 +166,7 @@ class DiskIntegral:
             for each in self.monomials
         )
 
-    def poles(self, kin: Kinematics) -> tuple[tuple[Channel, int, Exact], ...]:
+    def poles(self, kin: Mandelstams) -> tuple[tuple[Channel, int, Exact], ...]:
         """The channels whose divisor exponent is a pole, 0, -1, -2, ..., in some term.
 
         Returns
@@ -212,36 +209,6 @@ def _pole_levels(n: int, pairs: Sequence[Exact]) -> list[tuple[tuple[int, int], 
     return found
 
 
-@dataclass(frozen=True)
-class ExponentIntegral:
-    """:class:`DiskExponents` in the clothes of a :class:`DiskIntegral`: one term, ordering 1..n, no kinematics."""
-
-    exponents: DiskExponents
-
-    @property
-    def n(self) -> int:
-        """Number of punctures."""
-        return self.exponents.n
-
-    @property
-    def ordering(self) -> Channel:
-        """The canonical ordering."""
-        return tuple(range(1, self.n + 1))
-
-    def terms(self, kin: None = None) -> tuple[DiskTerm, ...]:
-        """The one term, with coefficient 1."""
-        return (DiskTerm(ONE, self.exponents.pairs),)
-
-    def poles(self, kin: None = None) -> tuple[tuple[Channel, int, Exact], ...]:
-        """Channels on a pole, with the level and the sum of the exponents inside."""
-        levels = _pole_levels(self.n, self.exponents.pairs)
-        return tuple((tuple(range(i, j + 1)), level, Exact(-level - (j - i))) for (i, j), level in levels)
-
-    def to_dict(self) -> dict[str, Any]:
-        """Plain data of the exponents."""
-        return self.exponents.to_dict()
-
-
 def shifted_exponents(ordering: Sequence[int], powers: Mapping[Pair, int] | Powers) -> tuple[int, dict[Pair, int]]:
     """Every monomial on P is a Parke-Taylor integral at shifted kinematics.
 
@@ -269,7 +236,6 @@ def shifted_exponents(ordering: Sequence[int], powers: Mapping[Pair, int] | Powe
     for k, label in enumerate(order):
         a, b = order[k - 1], label
         shifts[min(a, b), max(a, b)] = 1
-    sign = 1
     (term,) = monomial(dict(powers)).terms
     sign = 1 if term.coefficient == 1 else -1
     for (i, j), power in term.powers:
@@ -281,7 +247,7 @@ def shifted_exponents(ordering: Sequence[int], powers: Mapping[Pair, int] | Powe
     return sign, shifts
 
 
-def shifted_parke_taylor(kin: Kinematics, integral: DiskIntegral) -> tuple[tuple[Exact, Mandelstams], ...]:
+def shifted_parke_taylor(kin: Mandelstams, integral: DiskIntegral) -> tuple[tuple[Exact, Mandelstams], ...]:
     """``Z_P(f)`` at kin as ``sum_k c_k Z_P(PT(P))`` at massless points ``kin_k``; see :func:`shifted_exponents`.
 
     Raises
@@ -323,7 +289,7 @@ class SphereIntegral:
         for name, integrand in (("_left", self.f), ("_right", self.g)):
             object.__setattr__(self, name, tuple(_by_label(self.n, term.powers) for term in integrand.terms))
 
-    def terms(self, kin: Kinematics) -> tuple[SphereTerm, ...]:
+    def terms(self, kin: Mandelstams) -> tuple[SphereTerm, ...]:
         """The terms at a kinematic point, one for each pair of monomials of f and g; an empty tuple is zero.
 
         Raises
@@ -343,7 +309,7 @@ class SphereIntegral:
             for b, right in zip(self.g.terms, self._right, strict=True)  # type: ignore[attr-defined]
         )
 
-    def poles(self, kin: Kinematics) -> tuple[tuple[Channel, int, Exact], ...]:
+    def poles(self, kin: Mandelstams) -> tuple[tuple[Channel, int, Exact], ...]:
         """Channels on a pole in some term: both divisor exponents are non-positive integers.
 
         Returns
@@ -373,26 +339,6 @@ class SphereIntegral:
         return f"sphere integral of {self.f} times the conjugate of {self.g}"
 
 
-@dataclass(frozen=True)
-class SphereExponentIntegral:
-    """:class:`SphereExponents` in the clothes of a :class:`SphereIntegral`."""
-
-    exponents: SphereExponents
-
-    @property
-    def n(self) -> int:
-        """Number of punctures."""
-        return self.exponents.n
-
-    def terms(self, kin: None = None) -> tuple[SphereTerm, ...]:
-        """The one term, with coefficient 1."""
-        return (SphereTerm(ONE, self.exponents.pairs, self.exponents.left, self.exponents.right),)
-
-    def to_dict(self) -> dict[str, Any]:
-        """Plain data of the exponents."""
-        return self.exponents.to_dict()
-
-
 def _by_label(n: int, powers: Powers) -> tuple[int, ...]:
     found = [0] * len(pair_order(n))
     for pair, power in powers:
@@ -414,8 +360,3 @@ def _subsets(n: int) -> tuple[Channel, ...]:
     from itertools import combinations
 
     return tuple(c for size in range(2, n - 1) for c in combinations(range(1, n), size))
-
-
-def dotted_poles(poles: Sequence[tuple[Channel, int, Exact]]) -> str:
-    """Poles for a message: ``1.2 at level 0, 3.4 at level 1``."""
-    return ", ".join(f"{dotted(channel)} at level {level}" for channel, level, _x in poles)

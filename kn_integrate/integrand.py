@@ -7,6 +7,7 @@ are therefore equal objects; relations among the ``z_ij`` themselves (``z_12 + z
 
 from __future__ import annotations
 
+import numbers
 import re
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
@@ -226,7 +227,7 @@ def _as_integrand(value: Any) -> Integrand | None:
     try:
         number = read(value, "coefficient")[0]
     except InputError:
-        if isinstance(value, str):  # a text can only be meant as a coefficient
+        if isinstance(value, (str, numbers.Number)):  # meant as a coefficient, and not usable as one
             raise
         return None
     return _from({(): number})
