@@ -174,8 +174,8 @@ def residue(
     --------
     >>> import kn_integrate as kn
     >>> kin = kn.Mandelstams.from_planar(4, {(1, 2): "1/3", (2, 3): "1/2"})
-    >>> kn.residue(kin, kn.parke_taylor(1, 2, 3, 4), channel=(1, 2), level=1).value  # 1 - s23
-    0.5
+    >>> print(f"{kn.residue(kin, kn.parke_taylor(1, 2, 3, 4), channel=(1, 2), level=1).value:.9f}")  # 1 - s23
+    0.500000000
     """
     if g is not None:
         from .sphere.residues import residue as sphere_residue

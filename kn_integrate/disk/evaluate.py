@@ -18,6 +18,9 @@ from .sectors import runs_of
 SAFETY = 8.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
 MAX_PASSES = 12
 DEFAULT_MAX_POINTS = 2e10
+# A better conditioned plan may cost this many times the first one (or this many points).  Beyond that a small value of
+# an oscillating integral would buy half a digit at a hundredfold price.
+DEARER, CHEAP_POINTS = 30.0, 3e7
 
 
 @dataclass(frozen=True)
@@ -133,24 +136,28 @@ def integrate(
     choices = initial_choices(data, digits, family, residues)
     best: _Pass | None = None
     spent = 0
+    affordable = max(DEARER * layout_of(data.n, choices).points, CHEAP_POINTS)
+    may_raise = family is None
     for attempt in range(1, MAX_PASSES + 1):
         layout = layout_of(data.n, choices)
         if spent + layout.points > max_points:
             if best is None:
-                raise WorkLimitError(
-                    layout.points, max_points, "points", "raise max_points=, relax rtol=, or use method='kz'"
-                )
+                hint = "raise max_points=, relax rtol=, or use method='kz'"
+                raise WorkLimitError(layout.points, max_points, "points", hint)
             break
         outcome = run(data, layout, threads)
         spent += outcome.points
         if not outcome.finite:
             # nodes of several chords together left the region where the branch is known: use the safest rule there is
-            changed = [
-                _safer(data, choice, c, digits) if family is None else choice for c, choice in enumerate(choices)
-            ]
-            if changed == choices:
+            safer = [_safer(data, choice, c, digits) if may_raise else choice for c, choice in enumerate(choices)]
+            if best is not None and (safer == choices or layout_of(data.n, safer).points > affordable):
+                may_raise = False  # go on from the best pass, with more nodes only
+                further = _proposal(data, best, max(atol, rtol * abs(best.outcome.value)), digits, None)
+            else:
+                further = safer if safer != choices else None
+            if further is None:
                 break
-            choices = changed
+            choices = further
             continue
         worst = _worst_roundoff(data, layout, outcome)
         truncation = SAFETY * float(outcome.truncation.sum())
@@ -163,39 +170,20 @@ def integrate(
             best = current
         if truncation + likely <= target:
             if not current.settled:
-                rounding, points = _exponent_rounding(data, layout, outcome, threads)
+                current, points = _settled(data, current, threads)
                 spent += points
-                current = replace(current, roundoff=min(worst, likely + rounding), settled=True)
                 best = current
             if truncation + current.roundoff <= target:
                 break
-        improved = False
-        new = list(choices)
-        if likely > 0.3 * target and family is None:
-            new = _raise_strongest(data, new, digits)
-            improved = new != choices
-        goal = max(target, likely)
-        share = 0.5 * goal / (SAFETY * len(choices))
-        for c, choice in enumerate(new):
-            excess = float(outcome.truncation[c]) / share if share > 0 else math.inf
-            if choice.family != choices[c].family or excess <= 1.0:
-                continue
-            rate = -math.log(min(float(outcome.decay[c]), 0.98))
-            per_step = rate * (1.0 if choice.family == "overhang" else 2.0)
-            extra = min(max(1, math.ceil(math.log(min(excess, 1e30)) / per_step)), 12)
-            if choice.total + extra <= MAX_NODES:
-                new[c] = choice.more(extra)
-                improved = True
-        if not improved:
+        further = _proposal(data, current, target, digits, affordable if may_raise else None)
+        if further is None:
             break
-        choices = new
+        choices = further
     if best is None:
         return Integral(math.nan, math.inf, math.inf, spent, tuple(choices), MAX_PASSES)
     if not best.settled:
-        worst = _worst_roundoff(data, best.layout, best.outcome)
-        rounding, points = _exponent_rounding(data, best.layout, best.outcome, threads)
+        best, points = _settled(data, best, threads)
         spent += points
-        best = replace(best, roundoff=min(worst, best.roundoff + rounding), settled=True)
     return Integral(best.outcome.value, best.truncation, best.roundoff, spent, best.choices, best.attempt)
 
 
@@ -210,6 +198,42 @@ class _Pass:
     truncation: float
     roundoff: float
     settled: bool
+
+
+def _settled(data: ChordData, current: _Pass, threads: int) -> tuple[_Pass, int]:
+    """The pass with its round-off completed to a bound, and the evaluations that took."""
+    worst = _worst_roundoff(data, current.layout, current.outcome)
+    rounding, points = _exponent_rounding(data, current.layout, current.outcome, threads)
+    return replace(current, roundoff=min(worst, current.roundoff + rounding), settled=True), points
+
+
+def _proposal(
+    data: ChordData, current: _Pass, target: float, digits: float, affordable: float | None
+) -> list[Choice] | None:
+    """The next plan: better conditioned rules where round-off limits, more nodes where truncation does.
+
+    ``affordable`` bounds the points of a plan with other rules; None keeps the rules.  None when nothing is left to do.
+    """
+    choices = list(current.choices)
+    new = list(choices)
+    improved = False
+    if affordable is not None and current.roundoff > 0.3 * target:
+        stronger = _raise_strongest(data, new, digits)
+        if stronger != choices and layout_of(data.n, stronger).points <= affordable:
+            new, improved = stronger, True
+    goal = max(target, current.roundoff)
+    share = 0.5 * goal / (SAFETY * len(choices))
+    for c, choice in enumerate(new):
+        excess = float(current.outcome.truncation[c]) / share if share > 0 else math.inf
+        if choice.family != choices[c].family or excess <= 1.0:
+            continue
+        rate = -math.log(min(float(current.outcome.decay[c]), 0.98))
+        per_step = rate * (1.0 if choice.family == "overhang" else 2.0)
+        extra = min(max(1, math.ceil(math.log(min(excess, 1e30)) / per_step)), 12)
+        if choice.total + extra <= MAX_NODES:
+            new[c] = choice.more(extra)
+            improved = True
+    return new if improved else None
 
 
 def _safer(data: ChordData, choice: Choice, index: int, digits: float) -> Choice:

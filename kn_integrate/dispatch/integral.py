@@ -172,13 +172,13 @@ def _on_cancelling_poles(point: _Point, on_pole: Sequence[tuple[Chord, int]], re
         raise point.pole_error(on_pole)
     evaluations = sum(series.evaluations for series in found)
     channels = ", ".join(".".join(map(str, point.name(chord))) for chord in singular)
-    value: Any = one
+    number: Any = one
     if request.digits is None:
-        value = float(one) if real else complex(one)
+        number = float(one) if real else complex(one)
     return Estimate(
-        value,
+        number,
         error,
-        judge(complex(value), error, request.rtol, request.atol, error),
+        judge(complex(number), error, request.rtol, request.atol, error),
         "circle",
         evaluations,
         request.rtol,

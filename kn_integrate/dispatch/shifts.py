@@ -40,7 +40,7 @@ def pair_shift(n: int, by: Mapping[Chord, Exact]) -> tuple[Exact, ...]:
     """The change of every pair when each chord's planar invariant moves by the given amount.
 
     >>> [str(h) for h in pair_shift(4, {(1, 2): Exact("1/2")})]
-    ['1/2', '0', '-1/2', '-1/2', '0', '1/2']
+    ['1/2', '-1/2', '0', '0', '-1/2', '1/2']
     """
     shift = [ZERO] * len(pair_order(n))
     for chord, h in by.items():

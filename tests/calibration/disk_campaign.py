@@ -5,7 +5,8 @@
 
 Every class of cases prints one line: how many, how many were ok, how many true errors lay above the claimed ones (and
 of those how many called themselves ok), the smallest and the median quotient claimed/true, and the share whose claimed
-error is at most 1e-8 of the value among those that asked for that much.  Cases are seeded one by one, so any of them can be run again alone.
+error is at most 1e-8 of the value among those that asked for that much.  Cases are seeded one by one, so any of them
+can be run again alone.
 """
 
 from __future__ import annotations
@@ -25,12 +26,12 @@ import numpy as np
 
 sys.path.insert(0, str(Path(__file__).parent.parent / "published"))
 
-from cases import random_case  # noqa: E402
+from cases import random_case
 
-from kn_integrate.disk.evaluate import integrate_pairs  # noqa: E402
-from kn_integrate.dispatch.shifts import chords_of, pair_order, pair_shift  # noqa: E402
-from kn_integrate.errors import WorkLimitError  # noqa: E402
-from kn_integrate.exact import Exact  # noqa: E402
+from kn_integrate.disk.evaluate import integrate_pairs
+from kn_integrate.dispatch.shifts import chords_of, pair_order, pair_shift
+from kn_integrate.errors import WorkLimitError
+from kn_integrate.exact import Exact
 
 EPSILON = 2.0**-52
 
@@ -210,7 +211,10 @@ def _useful(findings: list[Finding]) -> float:
     return sum(f.claimed <= 1e-8 for f in strict) / max(1, len(strict))
 
 
-HEAD = f"{'class':18s}{'regime':12s}{'cases':>6s}{'ok':>6s}{'small':>6s}{'wrong':>6s}{'least':>9s}{'median':>9s}{'useful':>8s}{'sec':>7s}"
+HEAD = (
+    f"{'class':18s}{'regime':12s}{'cases':>6s}{'ok':>6s}{'small':>6s}{'wrong':>6s}"
+    f"{'least':>9s}{'median':>9s}{'useful':>8s}{'sec':>7s}"
+)
 
 
 def line(group: Group, s: dict[str, float]) -> str:
