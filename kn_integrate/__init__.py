@@ -22,12 +22,14 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "exponents": ("DiskExponents", "SphereExponents"),
     "integrals": ("DiskIntegral", "SphereIntegral"),
     "api": ("disk_integral", "residue"),
+    "convergence": ("Convergence", "converge"),
     "poles": ("LaurentSeries", "laurent_series", "plus_i_epsilon"),
 }
 _MODULE_OF = {name: module for module, names in _HOMES.items() for name in names}
 
 if TYPE_CHECKING:
     from .api import disk_integral, residue
+    from .convergence import Convergence, converge
     from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
     from .estimate import Estimate
     from .exponents import DiskExponents, SphereExponents
@@ -38,6 +40,7 @@ if TYPE_CHECKING:
     from .poles import LaurentSeries, laurent_series, plus_i_epsilon
 
 __all__ = [
+    "Convergence",
     "DiskExponents",
     "DiskIntegral",
     "Estimate",
@@ -53,6 +56,7 @@ __all__ = [
     "Status",
     "WorkLimitError",
     "__version__",
+    "converge",
     "disk_integral",
     "laurent_series",
     "monomial",
