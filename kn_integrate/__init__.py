@@ -23,6 +23,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "integrals": ("DiskIntegral", "SphereIntegral"),
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
+    "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "zeta"),
     "poles": ("LaurentSeries", "laurent_series", "plus_i_epsilon"),
 }
 _MODULE_OF = {name: module for module, names in _HOMES.items() for name in names}
@@ -32,6 +33,7 @@ if TYPE_CHECKING:
     from .convergence import Convergence, converge
     from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
     from .estimate import Estimate
+    from .expansion import AlphaSeries, FEntry, ZetaSum, alpha_expansion, recognise, zeta
     from .exponents import DiskExponents, SphereExponents
     from .integrals import DiskIntegral, SphereIntegral
     from .integrand import Integrand, monomial, parke_taylor, parse_integrand
@@ -40,10 +42,12 @@ if TYPE_CHECKING:
     from .poles import LaurentSeries, laurent_series, plus_i_epsilon
 
 __all__ = [
+    "AlphaSeries",
     "Convergence",
     "DiskExponents",
     "DiskIntegral",
     "Estimate",
+    "FEntry",
     "InputError",
     "Integrand",
     "KNError",
@@ -55,7 +59,9 @@ __all__ = [
     "SphereIntegral",
     "Status",
     "WorkLimitError",
+    "ZetaSum",
     "__version__",
+    "alpha_expansion",
     "converge",
     "disk_integral",
     "laurent_series",
@@ -64,7 +70,9 @@ __all__ = [
     "parse_integrand",
     "plus_i_epsilon",
     "random_momenta",
+    "recognise",
     "residue",
+    "zeta",
 ]
 
 

@@ -22,6 +22,7 @@ from .trees import Currents
 from .zetas import Product, ZetaSum, product_weight
 
 Engine: TypeAlias = Callable[[Mandelstams, int], Mapping[Word, Series]]
+ZERO_SUM = ZetaSum()
 
 
 def exact_engine(kin: Mandelstams, weight: int) -> dict[Word, Series]:
@@ -49,7 +50,7 @@ def disk_series(
     ordering: Sequence[int],
     weight: int,
     engine: Engine = exact_engine,
-    times: Callable[[Any, Exact], Any] = lambda value, c: value * c,
+    zero: Any = ZERO_SUM,
 ) -> Series:
     """The coefficients of ``Z_P(f)`` by weight.
 
@@ -63,8 +64,8 @@ def disk_series(
         The ordering P.
     weight
         The highest weight.
-    engine, times
-        What gives the functions F, and how one of its numbers is multiplied by an exact one.
+    engine, zero
+        What gives the functions F, and zero as one of its numbers.
 
     Raises
     ------
@@ -76,27 +77,21 @@ def disk_series(
     point, integrand = in_standard_order(kin, f, ordering)
     words = chains(point.n, integrand)
     try:
-        return _combine(point, words, weight, engine, times)
+        return _combine(point, words, weight, engine, zero)
     except ZeroDivisionError:
         pass
     found = through_zeros(
-        point, _propagators(words), weight, lambda moved: _combine(moved, words, weight, engine, times), times
+        point, _propagators(words), weight, lambda moved: _combine(moved, words, weight, engine, zero)
     )
     if found is None:
         raise _pole_error(kin, ordering)
     return found
 
 
-def _combine(
-    kin: Mandelstams,
-    words: Mapping[Word, Exact],
-    weight: int,
-    engine: Engine,
-    times: Callable[[Any, Exact], Any],
-) -> Series:
+def _combine(kin: Mandelstams, words: Mapping[Word, Exact], weight: int, engine: Engine, zero: Any) -> Series:
     n = kin.n
     currents = Currents(kin.pair)
-    total: Series = [ZetaSum() if engine is exact_engine else 0] * (weight + 1)
+    total: Series = [zero] * (weight + 1)
     if not words:
         return total
     for word, series in engine(kin, weight).items():
@@ -104,8 +99,16 @@ def _combine(
         for q, c in words.items():
             factor = factor + c * currents.numerator((1, *q), (1, *word, n - 1))
         if factor:
-            total = [a + times(b, factor) for a, b in zip(total, series, strict=True)]
+            total = [a + b * factor for a, b in zip(total, series, strict=True)]
     return total
+
+
+def f_series(kin: Mandelstams, row: Word, column: Word, weight: int, engine: Engine = exact_engine) -> Series:
+    """The entry of the matrix F for the domain (1, row, n-1, n) and the word of a column."""
+    ordering = (1, *row, kin.n - 1, kin.n)
+    new = {label: k for k, label in enumerate(ordering, start=1)}
+    point = kin.relabelled([new[label] for label in range(1, kin.n + 1)])
+    return engine(point, weight)[tuple(new[label] for label in column)]
 
 
 def _propagators(words: Iterable[Word]) -> list[Word]:

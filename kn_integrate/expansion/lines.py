@@ -19,7 +19,6 @@ from .zetas import ZetaSum
 
 # The coefficients of one integral by weight: ZetaSum, or balls.
 Series: TypeAlias = list[Any]
-Times: TypeAlias = Callable[[Any, Exact], Any]
 
 
 def through_zeros(
@@ -27,7 +26,6 @@ def through_zeros(
     propagators: Sequence[Iterable[int]],
     weight: int,
     series_at: Callable[[Mandelstams], Series],
-    times: Times,
 ) -> Series | None:
     """The series at a point where ``series_at`` fails for vanishing propagators; None where it has a pole.
 
@@ -50,22 +48,22 @@ def through_zeros(
                 whole = whole * moved.channel(labels)
             if whole:
                 places.append(place)
-                values.append([times(value, whole) for value in series_at(moved)])
-        lowest = [_taylor(places, [value[w] for value in values], zeros, times) for w in range(weight + 1)]
+                values.append([value * whole for value in series_at(moved)])
+        lowest = [_taylor(places, [value[w] for value in values], zeros) for w in range(weight + 1)]
         rest = ONE
         for labels in propagators:
             x = point.channel(labels)
             rest = rest * (x if x else direction.channel(labels))
         if not all(_vanishes(c) for each in lowest for c in each[:zeros]):
             return None
-        results.append([times(each[zeros], ONE / rest) for each in lowest])
+        results.append([each[zeros] * (ONE / rest) for each in lowest])
     if not all(_vanishes(a - b) for a, b in zip(*results, strict=True)):
         return None
     return results[0]
 
 
 def _vanishes(value: Any) -> bool:
-    return not value if isinstance(value, ZetaSum) else bool(value.contains(0))
+    return not value if isinstance(value, ZetaSum) else bool(value.contains_zero())
 
 
 def _direction(n: int, seed: int) -> Mandelstams:
@@ -77,7 +75,7 @@ def _direction(n: int, seed: int) -> Mandelstams:
     return Mandelstams.from_pairs(n, pairs)
 
 
-def _taylor(places: Sequence[Exact], values: Sequence[Any], order: int, times: Times) -> list[Any]:
+def _taylor(places: Sequence[Exact], values: Sequence[Any], order: int) -> list[Any]:
     """The coefficients of t^0..t^order of the polynomial through the points (Lagrange's form)."""
     full = [ONE]  # prod (t - t_k), lowest power first
     for place in places:
@@ -94,6 +92,6 @@ def _taylor(places: Sequence[Exact], values: Sequence[Any], order: int, times: T
         for c in reversed(quotient):
             at = at * place + c
         for k in range(order + 1):
-            part = times(value, quotient[k] / at)
+            part = value * (quotient[k] / at)
             total[k] = part if total[k] is None else total[k] + part
     return total

@@ -1,8 +1,8 @@
 """Multiple zeta values as numbers, to any number of digits.
 
-The iterated integral from 0 to 1 is cut at 1/2 (path composition, with t -> 1 - t on the upper half), which leaves nested
-sums that converge like 2^-k (Borwein, Bradley, Broadhurst, Lisonek 2001, "Special values of multiple polylogarithms",
-the Hoelder convolution):
+The iterated integral from 0 to 1 is cut at 1/2 (path composition, with t -> 1 - t on the upper half), which leaves
+nested sums that converge like 2^-k (the Hoelder convolution; Borwein, Bradley, Broadhurst, Lisonek 2001, "Special
+values of multiple polylogarithms"):
 
     ``zeta(w) = sum over cuts w = u v of Li(u; 1/2) Li(v*; 1/2)``,  v* the reversed word with letters exchanged.
 
@@ -11,13 +11,19 @@ Everything is integers with a fixed number of bits after the point, so a result 
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from functools import lru_cache
 from typing import Any
 
+from .balls import Ball
 from .reduction import composition_of, word_of
 from .zetas import Composition, Product, ZetaSum
 
-GUARD = 40  # bits for the accumulated roundings; each of the < 2^20 additions is off by at most one unit
+# Each rounding is at most one unit.  The outer sum of a polylogarithm has two in each of its `bits` terms, inner ones
+# are damped by 2^-k; with at most 13 cuts and products of at most 6 zeta values (each below 1.65), 2^28 units are enough
+# for 10^5 bits.
+PRODUCT_ERROR = 1 << 28
+GUARD = 64
 
 
 @lru_cache(maxsize=4096)
@@ -40,7 +46,7 @@ def _half_polylog(indices: Composition, bits: int) -> int:
 
 @lru_cache(maxsize=1024)
 def fixed_zeta(indices: Composition, bits: int) -> int:
-    """A convergent multiple zeta value in units of 2^-bits; off by less than 2^(GUARD / 2) units."""
+    """A convergent multiple zeta value in units of 2^-bits; off by less than 2^24 units."""
     word = word_of(indices)
     swap = str.maketrans("01", "10")
     total = 0
@@ -52,7 +58,7 @@ def fixed_zeta(indices: Composition, bits: int) -> int:
 
 
 def fixed_product(product: Product, bits: int) -> int:
-    """A product of multiple zeta values in units of 2^-bits."""
+    """A product of multiple zeta values in units of 2^-bits, off by less than PRODUCT_ERROR units."""
     value = 1 << bits
     for indices in product:
         value = (value * fixed_zeta(indices, bits)) >> bits
@@ -64,17 +70,37 @@ def bits_of(digits: int) -> int:
     return int(digits * 3.3219280948873626) + 2
 
 
-def value_of(combination: ZetaSum, digits: int) -> Any:
-    """The number that a combination is, as an mpmath number; absolute error below 10^-digits of its largest term."""
-    from mpmath import libmp, mp
-
-    bits = bits_of(digits) + GUARD
-    parts = [0, 0]
+def ball_of(combination: ZetaSum, bits: int) -> Ball:
+    """A combination of multiple zeta values as a number with an error bound."""
+    re = im = error = 0
     for product, coefficient in combination.terms:
         fixed = fixed_product(product, bits)
         p, q, d = coefficient.as_ratio()
-        parts[0] += p * fixed // d
-        parts[1] += q * fixed // d
-    precision = bits_of(digits)
-    raw = [libmp.from_man_exp(part, -bits, precision) for part in parts]
-    return mp.make_mpf(raw[0]) if combination.is_real else mp.make_mpc(tuple(raw))
+        re += p * fixed // d
+        im += q * fixed // d
+        error += (abs(p) + abs(q)) * (PRODUCT_ERROR if product else 0) // d + 1
+    return Ball(re, im, error, bits)
+
+
+def ball_with(digits: int, ball_at: Callable[[int], Ball], tries: int = 4) -> Ball:
+    """A ball with so many correct digits: more bits are taken until the error is small beside the number.
+
+    A number that stays within its error of zero comes back from the last try.
+    """
+    bits = bits_of(digits) + GUARD
+    for _ in range(tries):
+        ball = ball_at(bits)
+        lacking = (ball.error * 10 ** (digits + 1)).bit_length() - max(abs(ball.re), abs(ball.im)).bit_length()
+        if not ball.error or lacking <= 0:
+            return ball
+        bits += max(lacking, 16)
+    return ball
+
+
+def value_of(combination: ZetaSum, digits: int) -> Any:
+    """The number that a combination is, as an mpmath number with ``digits`` correct digits."""
+    if not combination:
+        from mpmath import mp
+
+        return mp.mpf(0)
+    return ball_with(digits, lambda bits: ball_of(combination, bits)).number(digits)

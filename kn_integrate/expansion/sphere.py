@@ -17,11 +17,12 @@ from math import factorial
 from typing import Any
 
 from ..errors import PoleError
-from ..exact import ZERO, Exact
+from ..exact import ONE, Exact
 from ..integrand import Integrand
 from ..kinematics import Mandelstams
-from .disk import Engine, disk_series, exact_engine
-from .lines import Series, Times, through_zeros
+from .balls import Ball
+from .disk import ZERO_SUM, Engine, disk_series, exact_engine
+from .lines import Series, through_zeros
 from .zetas import ZETA_ONE, ZetaSum, zeta
 
 
@@ -31,7 +32,7 @@ def sphere_series(
     g: Integrand,
     weight: int,
     engine: Engine = exact_engine,
-    times: Times = lambda value, c: value * c,
+    zero: Any = ZERO_SUM,
     zeta2: Any = None,
 ) -> Series:
     """The coefficients of ``J(f|g)`` by weight; weight w stands at ``alpha'^(w-(n-3))``.
@@ -44,8 +45,8 @@ def sphere_series(
         Sums of Parke-Taylor factors up to partial fractions; the coefficients of g are conjugated.
     weight
         The highest weight.
-    engine, times, zeta2
-        The engine for disk integrals, how its numbers are multiplied by exact ones, and zeta(2) as such a number.
+    engine, zero, zeta2
+        The engine for disk integrals, and zero and zeta(2) as its numbers.
 
     Raises
     ------
@@ -58,7 +59,7 @@ def sphere_series(
     z2 = zeta(2) if zeta2 is None else zeta2
 
     def at(point: Mandelstams) -> Series:
-        return _bilinear(point, f, second, weight, engine, times, z2)
+        return _bilinear(point, f, second, weight, engine, zero, z2)
 
     try:
         return at(kin)
@@ -66,7 +67,7 @@ def sphere_series(
         pass
     n = kin.n
     channels = [c for size in range(2, n - 1) for c in combinations(range(1, n), size)]
-    found = through_zeros(kin, channels, weight, at, times)
+    found = through_zeros(kin, channels, weight, at)
     if found is None:
         channel = next(c for c in channels if not kin.channel(c))
         raise PoleError(channel, 0, kin.channel(channel))
@@ -74,17 +75,17 @@ def sphere_series(
 
 
 def _bilinear(
-    kin: Mandelstams, f: Integrand, g: Integrand, weight: int, engine: Engine, times: Times, zeta2: Any
+    kin: Mandelstams, f: Integrand, g: Integrand, weight: int, engine: Engine, zero: Any, zeta2: Any
 ) -> Series:
     n = kin.n
     words = list(permutations(range(2, n - 1)))
-    left = {w: disk_series(kin, f, (1, *w, n, n - 1), weight, engine, times) for w in words}
-    right = {w: disk_series(kin, g, (1, *w, n - 1, n), weight, engine, times) for w in words}
-    total: Series = [times(value, ZERO) for value in left[words[0]]]
+    left = {w: disk_series(kin, f, (1, *w, n, n - 1), weight, engine, zero) for w in words}
+    right = {w: disk_series(kin, g, (1, *w, n - 1, n), weight, engine, zero) for w in words}
+    total: Series = [zero] * (weight + 1)
     for r in words:
-        inner: Series = [times(value, ZERO) for value in total]
+        inner: Series = [zero] * (weight + 1)
         for t in words:
-            kernel = _kernel(kin, r, t, weight, times, zeta2)
+            kernel = _kernel(kin, r, t, weight, zero, zeta2)
             inner = [a + b for a, b in zip(inner, _multiplied(kernel, right[t]), strict=True)]
         total = [a - b for a, b in zip(total, _multiplied(left[r], inner), strict=True)]
     return total
@@ -101,24 +102,24 @@ def _sum(values: Sequence[Any]) -> Any:
     return total
 
 
-def _kernel(kin: Mandelstams, r: tuple[int, ...], t: tuple[int, ...], weight: int, times: Times, zeta2: Any) -> Series:
-    one = ZETA_ONE if isinstance(zeta2, ZetaSum) else zeta2 / zeta2
-    series: Series = [one] + [times(one, ZERO)] * weight
+def _kernel(kin: Mandelstams, r: tuple[int, ...], t: tuple[int, ...], weight: int, zero: Any, zeta2: Any) -> Series:
+    one = ZETA_ONE if isinstance(zero, ZetaSum) else Ball.of(ONE, zero.bits)
+    series: Series = [one, *[zero] * weight]
     while r:
         j = r[-1]
         place = t.index(j)
         x = sum((kin.pair(j, b) for b in t[:place]), kin.pair(1, j))
-        series = _multiplied(series, _sine(x, weight, times, one, zeta2))
+        series = _multiplied(series, _sine(x, weight, zero, one, zeta2))
         r, t = r[:-1], t[:place] + t[place + 1 :]
     return series
 
 
-def _sine(x: Exact, weight: int, times: Times, one: Any, zeta2: Any) -> Series:
+def _sine(x: Exact, weight: int, zero: Any, one: Any, zeta2: Any) -> Series:
     """``sin(pi x alpha')/(pi alpha')`` by weight."""
-    series: Series = [times(one, ZERO)] * (weight + 1)
+    series: Series = [zero] * (weight + 1)
     power, c = one, x
     for k in range(0, weight + 1, 2):
-        series[k] = times(power, c * Fraction(1, factorial(k + 1)))
+        series[k] = power * (c * Fraction(1, factorial(k + 1)))
         power, c = power * zeta2, c * x * x * -6
     return series
 
@@ -135,7 +136,14 @@ def single_valued(value: ZetaSum) -> ZetaSum:
         For zeta(3,3,5), zeta(3,9) and zeta(1,1,4,6).
     """
     z3, z5, z7 = zeta(3), zeta(5), zeta(7)
-    images = {(2,): ZetaSum(), (3,): 2 * z3, (5,): 2 * z5, (7,): 2 * z7, (9,): 2 * zeta(9), (11,): 2 * zeta(11)}
+    images: dict[tuple[int, ...], ZetaSum] = {
+        (2,): ZetaSum(),
+        (3,): 2 * z3,
+        (5,): 2 * z5,
+        (7,): 2 * z7,
+        (9,): 2 * zeta(9),
+        (11,): 2 * zeta(11),
+    }
     images |= {(3, 5): -10 * z3 * z5, (3, 7): -28 * z3 * z7 - 12 * z5 * z5}
     total = ZetaSum()
     for product, c in value.terms:

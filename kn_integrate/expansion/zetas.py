@@ -128,7 +128,8 @@ class ZetaSum:
         return NotImplemented if right is None else self + -right
 
     def __rsub__(self, other: Any) -> ZetaSum:
-        return -self + other
+        left = _as_sum(other)
+        return NotImplemented if left is None else left + -self
 
     def __mul__(self, other: Any) -> ZetaSum:
         if other.__class__ is Exact:
@@ -141,7 +142,8 @@ class ZetaSum:
     __rmul__ = __mul__
 
     def __truediv__(self, other: Any) -> ZetaSum:
-        return self * (ONE / read(other, "divisor")[0])
+        inverse: Exact = ONE / read(other, "divisor")[0]
+        return self * inverse
 
     def coefficient(self, *generators: int | Composition) -> Exact:
         """The coefficient of a basis product: ``coefficient(2, 3)`` of zeta(2) zeta(3), ``coefficient((3, 5))``.

@@ -1,0 +1,266 @@
+"""The public call: from an integral and a kinematic point to its expansion in alpha'."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from math import lcm
+from typing import Any
+
+from ..errors import InputError, KNError, NotAvailableError
+from ..exact import read_integer
+from ..integrals import DiskIntegral, SphereIntegral
+from ..integrand import Integrand
+from ..kinematics import Mandelstams
+from ..ratios import shown
+from .balls import Ball
+from .fractions import Word
+from .lines import Series
+from .numeric import GUARD, ball_of, ball_with, bits_of, fixed_zeta
+from .recursion import ball_engine
+from .relations import recognise_ball
+from .result import AlphaSeries, Coefficient
+from .specs import FEntry, Spec, check, kind_of, leading_order, read_spec, series_of
+from .zetas import MAX_WEIGHT, ZetaSum
+
+METHODS = ("auto", "associator", "recursion")
+MAX_DIGITS = 2000
+EXACT_DENOMINATOR = 10**12  # beyond this a rational point is a rounded one, and its exact coefficients are of no use
+_CONFIRM_DISK, _CONFIRM_SPHERE = 7, 6  # the largest n for which "auto" runs the second engine too
+_CONFIRM_DIGITS = 30
+
+
+def alpha_expansion(
+    kin: Mandelstams,
+    f: Integrand | DiskIntegral | SphereIntegral | FEntry | str,
+    g: Integrand | str | None = None,
+    *,
+    ordering: Sequence[int] | None = None,
+    weight: int = 8,
+    digits: int | None = None,
+    method: str = "auto",
+) -> AlphaSeries:
+    """The low-energy expansion of a disk or sphere integral at a kinematic point.
+
+    All invariants are multiplied by alpha'; weight w of the multiple zeta values stands at ``alpha'^(w - (n - 3))``, so
+    the field-theory limit is weight 0.  On the disk the integral is ``Z_P(f)``; with ``g``, or a
+    :class:`SphereIntegral`, it is ``J(f|g)`` on the sphere.  An :class:`FEntry` has weight w at ``alpha'^w``.
+
+    Parameters
+    ----------
+    kin
+        Massless kinematics.
+    f
+        An integrand that is a sum of Parke-Taylor factors up to partial fractions, its text, an integral, or an FEntry.
+    g
+        The second integrand, for the sphere.
+    ordering
+        The ordering P on the disk; 1..n when None.
+    weight
+        The highest weight, 0 to 12.
+    digits
+        Digits of the numbers; None for doubles.
+    method
+        ``"associator"``: exact rational combinations of multiple zeta values, derived.  ``"recursion"``: numbers from
+        power series, recognised by integer relations where the digits suffice (with ``digits`` given, no more than
+        these are used).  ``"auto"``: the associator, confirmed by numbers from the recursion up to seven points on the
+        disk and six on the sphere; numbers alone, unrecognised, for a point that is not exact (with a denominator above
+        10^12, as floating-point input has).
+
+    Returns
+    -------
+    AlphaSeries
+        ``.exact`` and ``.numeric`` by weight; each coefficient says what it rests on.
+
+    Raises
+    ------
+    InputError
+        For kinematics that are not massless, an integrand that is not Moebius covariant, a bad weight or ordering.
+    PoleError
+        When the integral has a pole for every alpha' because a channel vanishes.
+    NotAvailableError
+        For an integrand with double poles; for method="associator" at a point that is not exact.
+
+    Notes
+    -----
+    The exact coefficients are theorems up to programming errors; the agreement with the second engine is evidence
+    against those.  A recognised number is evidence only, with its odds stated.
+
+    Examples
+    --------
+    >>> import kn_integrate as kn
+    >>> kin = kn.Mandelstams.from_planar(4, {(1, 2): 1, (2, 3): 2})
+    >>> series = kn.alpha_expansion(kin, kn.parke_taylor(1, 2, 3, 4), weight=3)
+    >>> [str(c) for c in series.exact]
+    ['3/2', '0', '-3*zeta(2)', '9*zeta(3)']
+    """
+    if not isinstance(kin, Mandelstams):
+        raise InputError("kin", type(kin).__name__, "Mandelstams")
+    spec = read_spec(kin.n, f, g, ordering)
+    top = read_integer(weight, "weight")
+    if not 0 <= top <= MAX_WEIGHT:
+        raise InputError("weight", shown(weight), f"a weight from 0 to {MAX_WEIGHT}")
+    if digits is not None and not 1 <= read_integer(digits, "digits") <= MAX_DIGITS:
+        raise InputError("digits", shown(digits), f"a number of digits from 1 to {MAX_DIGITS}")
+    if method not in METHODS:
+        raise InputError("method", shown(method), "one of " + ", ".join(METHODS))
+    check(spec, kin)
+    problem = _not_exact(kin)
+    if method == "associator" and problem:
+        raise NotAvailableError(f"method='associator' needs an exact point: {problem}")
+    if method == "recursion" or problem:
+        return _from_numbers(spec, kin, top, digits, problem)
+    return _from_words(spec, kin, top, digits, method == "auto")
+
+
+def _not_exact(kin: Mandelstams) -> str:
+    """Why the point is not treated as exact; empty when it is."""
+    if kin.shift:
+        return "its invariants were floating-point numbers that had to be moved to conserve momentum"
+    size = lcm(*(value.as_ratio()[2] for value in kin.pairs))
+    if size > EXACT_DENOMINATOR:
+        return f"the common denominator of the invariants has {len(str(size))} digits, as of rounded numbers"
+    return ""
+
+
+# --- exact ----------------------------------------------------------------------------------------------------------
+
+
+def _from_words(spec: Spec, kin: Mandelstams, weight: int, digits: int | None, confirm: bool) -> AlphaSeries:
+    exact = series_of(spec, kin, weight)
+    small = kin.n <= (_CONFIRM_SPHERE if isinstance(spec, SphereIntegral) else _CONFIRM_DISK)
+    details: dict[str, Any] = {}
+    basis = "derived"
+    if confirm and small:
+        agreed = _confirm(spec, kin, weight, exact)
+        details["confirmed_digits"] = agreed
+        basis = f"derived, confirmed by numbers to {agreed} digits"
+    elif confirm:
+        details["confirmed_digits"] = None
+    coefficients = []
+    for w, value in enumerate(exact):
+        number, error = _number(value, digits)
+        coefficients.append(Coefficient(w, w + leading_order(spec), number, error, value, digits, basis))
+    method = "associator+klt" if isinstance(spec, SphereIntegral) else "associator"
+    if confirm and small:
+        method += "+recursion"
+    return AlphaSeries(kin.n, leading_order(spec), _described(spec, kin), tuple(coefficients), method, details)
+
+
+def _number(value: ZetaSum, digits: int | None) -> tuple[Any, float]:
+    if not value:
+        return (0.0 if digits is None else value.value(digits)), 0.0
+    wanted = 20 if digits is None else digits
+    return _rounded(ball_with(wanted, lambda bits: ball_of(value, bits)), digits)
+
+
+def _rounded(ball: Ball, digits: int | None) -> tuple[Any, float]:
+    """The number a caller gets, and a bound on its error, the rounding included."""
+    if ball.contains_zero():  # no digit is known; what the midpoint is says nothing
+        around = Ball(0, 0, max(abs(ball.re), abs(ball.im)) + ball.error, ball.bits)
+        return (0.0 if digits is None else around.number(digits)), around.error_number()
+    number = ball.number(20 if digits is None else digits)
+    size = float(abs(number))
+    if digits is None:
+        plain: Any = complex(number) if ball.im else float(number)
+        return plain, ball.error_number() + size * 2.0**-52
+    return number, ball.error_number() + size * 2.0 ** -min(bits_of(digits), 1000)
+
+
+def _confirm(spec: Spec, kin: Mandelstams, weight: int, exact: Series) -> int:
+    """Compare with the second engine; the number of digits, of the largest coefficient of each weight, that agree."""
+    bits = bits_of(_CONFIRM_DIGITS) + GUARD + _growth(kin, weight)
+    numbers = _ball_series(spec, kin, weight, bits)
+    worst = float("inf")
+    for w, (value, ball) in enumerate(zip(exact, numbers, strict=True)):
+        difference = ball_of(value, bits) - ball
+        if not difference.contains_zero():
+            raise KNError(f"two derivations of the coefficient of weight {w} disagree; please report this point")
+        if value:
+            worst = min(worst, (ball.magnitude.bit_length() - difference.error.bit_length()) * 0.30103)
+    return int(min(worst, 10 * _CONFIRM_DIGITS))
+
+
+# --- numbers --------------------------------------------------------------------------------------------------------
+
+
+def _growth(kin: Mandelstams, weight: int) -> int:
+    """Bits that numbers of the recursion lose: the invariants to the power of the weight, and some."""
+    size = max(2.0, *(abs(value) for value in kin.pairs)) * kin.n
+    return int((weight + kin.n) * (len(bin(int(size))) - 1)) + 8
+
+
+def _ball_series(spec: Spec, kin: Mandelstams, weight: int, bits: int) -> Series:
+    known: dict[Mandelstams, dict[Word, list[Ball]]] = {}
+
+    def engine(point: Mandelstams, top: int) -> dict[Word, list[Ball]]:
+        if point not in known:
+            known[point] = ball_engine(point, top, bits)
+        return known[point]
+
+    zeta2 = Ball(fixed_zeta((2,), bits), 0, 1 << 24, bits)
+    return series_of(spec, kin, weight, engine, Ball(0, 0, 0, bits), zeta2)
+
+
+def _from_numbers(spec: Spec, kin: Mandelstams, weight: int, digits: int | None, problem: str) -> AlphaSeries:
+    wanted = 20 if digits is None else digits
+    series = _with_digits(spec, kin, weight, wanted)
+    balls = list(series)
+    exact: list[ZetaSum | None] = [None] * (weight + 1)
+    basis = [f"a number only: {problem}"] * (weight + 1)
+    if not problem:
+        used = wanted
+        missing = list(range(weight + 1))
+        while missing:
+            for w in missing:
+                found = recognise_ball(_limited(balls[w], digits), w)
+                exact[w] = found.exact
+                basis[w] = _basis_text(found, digits is not None)
+            missing = [w for w in missing if exact[w] is None]
+            # with digits= given these are all there are; otherwise take more while that is cheap
+            if digits is not None or used >= 500 or not missing:
+                break
+            used = 60 if used < 60 else 2 * used
+            balls = _with_digits(spec, kin, weight, used)
+    coefficients = []
+    for w, ball in enumerate(series):
+        number, error = _rounded(ball, digits)
+        coefficients.append(Coefficient(w, w + leading_order(spec), number, error, exact[w], digits, basis[w]))
+    method = "recursion" + ("+klt" if isinstance(spec, SphereIntegral) else "") + ("" if problem else "+relations")
+    return AlphaSeries(kin.n, leading_order(spec), _described(spec, kin), tuple(coefficients), method)
+
+
+def _limited(ball: Ball, digits: int | None) -> Ball:
+    """A ball as uncertain as the digits that were asked for: guard digits are not evidence."""
+    if digits is None:
+        return ball
+    size = max(abs(ball.re), abs(ball.im), 1 << ball.bits)
+    return Ball(ball.re, ball.im, max(ball.error, size // 10**digits), ball.bits)
+
+
+def _basis_text(found: Any, limited: bool) -> str:
+    if found.exact is not None:
+        return (
+            f"recognised from {found.digits:.0f} digits, integers of up to {found.height:.0f} digits, "
+            f"expected number of accidents 1e-{found.margin:.0f}"
+        )
+    advice = "; give more digits=, or none" if limited else ""
+    return f"a number only: {found.digits:.0f} digits do not single out a relation{advice}"
+
+
+def _with_digits(spec: Spec, kin: Mandelstams, weight: int, digits: int) -> Series:
+    """Balls with so many digits of the natural size of each coefficient."""
+    bits = bits_of(digits) + GUARD + _growth(kin, weight)
+    for _ in range(3):
+        series = _ball_series(spec, kin, weight, bits)
+        lacking = 0
+        for ball in series:
+            size = max(abs(ball.re), abs(ball.im), 1 << bits)  # a coefficient may vanish: then absolute digits
+            lacking = max(lacking, (ball.error * 10 ** (digits + 1)).bit_length() - size.bit_length())
+        if lacking <= 0:
+            break
+        bits += lacking + 8
+    return series
+
+
+def _described(spec: Spec, kin: Mandelstams) -> dict[str, Any]:
+    return {"kind": kind_of(spec), **spec.to_dict(), "kinematics": kin.to_dict()}
