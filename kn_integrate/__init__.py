@@ -23,7 +23,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "integrals": ("DiskIntegral", "SphereIntegral"),
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
-    "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "zeta"),
+    "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
     "poles": ("LaurentSeries", "laurent_series", "plus_i_epsilon"),
 }
 _MODULE_OF = {name: module for module, names in _HOMES.items() for name in names}
@@ -33,7 +33,7 @@ if TYPE_CHECKING:
     from .convergence import Convergence, converge
     from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
     from .estimate import Estimate
-    from .expansion import AlphaSeries, FEntry, ZetaSum, alpha_expansion, recognise, zeta
+    from .expansion import AlphaSeries, FEntry, ZetaSum, alpha_expansion, recognise, reconstruct, zeta
     from .exponents import DiskExponents, SphereExponents
     from .integrals import DiskIntegral, SphereIntegral
     from .integrand import Integrand, monomial, parke_taylor, parse_integrand
@@ -71,6 +71,7 @@ __all__ = [
     "plus_i_epsilon",
     "random_momenta",
     "recognise",
+    "reconstruct",
     "residue",
     "zeta",
 ]

@@ -20,7 +20,7 @@ from .reduction import composition_of, word_of
 from .zetas import Composition, Product, ZetaSum
 
 # Each rounding is at most one unit.  The outer sum of a polylogarithm has two in each of its `bits` terms, inner ones
-# are damped by 2^-k; with at most 13 cuts and products of at most 6 zeta values (each below 1.65), 2^28 units are enough
+# are damped by 2^-k; with at most 13 cuts and products of up to 6 zeta values (each below 1.65), 2^28 units are enough
 # for 10^5 bits.
 PRODUCT_ERROR = 1 << 28
 GUARD = 64
