@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -11,7 +12,7 @@ import numpy as np
 from ..errors import WorkLimitError
 from ..exact import Exact
 from .chords import ChordData, chord_data
-from .plan import MAX_NODES, Choice, amplification, initial_choices, layout_of, plan_table, raised
+from .plan import MAX_NODES, Choice, amplification, initial_choices, layout_of, plan_table, raised, thinned
 from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
@@ -70,6 +71,10 @@ def _worst_roundoff(data: ChordData, layout: Layout, outcome: Outcome) -> float:
 
 PROBE = 2.0**-24  # relative size of the trial perturbation of the exponents
 PROBES = 2
+PROBE_DIGITS = 4.0
+MAX_STEPS = 12  # growth of one rule from one pass to the next
+# Above this many points a plan is made from what a cheaper pass with this share of the digits shows.
+SCOUTED_POINTS, SCOUT_SHARE = 3e5, 0.55
 SIGMAS = 6.0
 
 
@@ -81,14 +86,20 @@ def _likely_roundoff(data: ChordData, outcome: Outcome) -> float:
     return SIGMAS * EPSILON * (outcome.weight_noise + (4.0 + 0.5 * _spread(data)) * outcome.square)
 
 
-def _exponent_rounding(data: ChordData, layout: Layout, outcome: Outcome, threads: int) -> tuple[float, int]:
+def _exponent_rounding(data: ChordData, choices: Sequence[Choice], threads: int) -> tuple[float, int]:
     """What the rounding of exponents to double costs: an error that is smooth in all variables, so it is measured.
 
-    The integral is done again with exponents perturbed by fixed pseudo-random amounts far above round-off, and the
-    change scaled down.  Returns the error and the evaluations spent.
+    The integral is done with exponents perturbed by fixed pseudo-random amounts far above round-off, and the change
+    scaled down.  A derivative to one digit is enough, so this is done with few nodes.  Returns the error and the
+    evaluations spent.
     """
+    layout = layout_of(data.n, thinned(data, choices, PROBE_DIGITS))
+    outcome = run(data, layout, threads)
+    if not outcome.finite:
+        layout = layout_of(data.n, choices)
+        outcome = run(data, layout, threads)
     generator = np.random.default_rng(20240229)  # fixed: the same input must give the same error
-    largest, points = 0.0, 0
+    largest, points = 0.0, outcome.points
     size = len(data.run_exponents)
     for _ in range(PROBES):
         signs = generator.uniform(0.5, 1.0, size) * generator.choice([-1.0, 1.0], size)
@@ -136,14 +147,17 @@ def integrate(
     choices = initial_choices(data, digits, family, residues)
     best: _Pass | None = None
     spent = 0
-    affordable = max(DEARER * layout_of(data.n, choices).points, CHEAP_POINTS)
+    first_points = layout_of(data.n, choices).points
+    if first_points > max_points:
+        hint = "raise max_points=, relax rtol=, or use method='kz'"
+        raise WorkLimitError(first_points, max_points, "points", hint)
+    affordable = max(DEARER * first_points, CHEAP_POINTS)
+    if first_points > SCOUTED_POINTS:
+        choices = initial_choices(data, SCOUT_SHARE * digits, family, residues, budget_digits=digits)
     may_raise = family is None
     for attempt in range(1, MAX_PASSES + 1):
         layout = layout_of(data.n, choices)
         if spent + layout.points > max_points:
-            if best is None:
-                hint = "raise max_points=, relax rtol=, or use method='kz'"
-                raise WorkLimitError(layout.points, max_points, "points", hint)
             break
         outcome = run(data, layout, threads)
         spent += outcome.points
@@ -203,8 +217,30 @@ class _Pass:
 def _settled(data: ChordData, current: _Pass, threads: int) -> tuple[_Pass, int]:
     """The pass with its round-off completed to a bound, and the evaluations that took."""
     worst = _worst_roundoff(data, current.layout, current.outcome)
-    rounding, points = _exponent_rounding(data, current.layout, current.outcome, threads)
+    rounding, points = _exponent_rounding(data, current.choices, threads)
     return replace(current, roundoff=min(worst, current.roundoff + rounding), settled=True), points
+
+
+def _increments(current: _Pass, goal: float) -> dict[int, int]:
+    """How many steps each chord's rule should grow so that the errors, extrapolated, add up to at most ``goal``.
+
+    Greedy: the next step goes to the chord that takes off most error for the points it adds.
+    """
+    errors = current.outcome.truncation.copy()
+    shares = current.layout.shares(len(errors))
+    steps = np.zeros(len(errors), dtype=np.int64)
+    gain = np.zeros(len(errors))
+    for c, choice in enumerate(current.choices):
+        rate = -math.log(min(max(float(current.outcome.decay[c]), 1e-9), 0.98))
+        gain[c] = -math.expm1(-rate * (1.0 if choice.family == "overhang" else 2.0))
+    active = (errors > 0) & (shares > 0)
+    while errors[active].sum() > goal and active.any():
+        c = int(np.where(active, errors * gain / np.maximum(shares, 1e-300), -1.0).argmax())
+        errors[c] *= 1.0 - gain[c]
+        steps[c] += 1
+        if steps[c] >= MAX_STEPS:
+            active[c] = False
+    return {c: int(k) for c, k in enumerate(steps) if k}
 
 
 def _proposal(
@@ -221,17 +257,10 @@ def _proposal(
         stronger = _raise_strongest(data, new, digits)
         if stronger != choices and layout_of(data.n, stronger).points <= affordable:
             new, improved = stronger, True
-    goal = max(target, current.roundoff)
-    share = 0.5 * goal / (SAFETY * len(choices))
-    for c, choice in enumerate(new):
-        excess = float(current.outcome.truncation[c]) / share if share > 0 else math.inf
-        if choice.family != choices[c].family or excess <= 1.0:
-            continue
-        rate = -math.log(min(float(current.outcome.decay[c]), 0.98))
-        per_step = rate * (1.0 if choice.family == "overhang" else 2.0)
-        extra = min(max(1, math.ceil(math.log(min(excess, 1e30)) / per_step)), 12)
-        if choice.total + extra <= MAX_NODES:
-            new[c] = choice.more(extra)
+    goal = 0.5 * max(target, current.roundoff) / SAFETY
+    for c, extra in _increments(current, goal).items():
+        if new[c].family == choices[c].family and choices[c].total + extra <= MAX_NODES:
+            new[c] = choices[c].more(extra)
             improved = True
     return new if improved else None
 

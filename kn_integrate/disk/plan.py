@@ -172,7 +172,7 @@ def first_count(data: ChordData, index: int, family: str, digits: float) -> tupl
     work = goal + np.maximum(bound, 0.0)
     if family == "radau":
         nodes = math.ceil(float((work / (2.0 * np.log(trial))).min())) + 1
-        return max(nodes, 6), 0
+        return max(nodes, 5), 0
     if family == "overhang":
         return max(math.ceil(float((work / np.log(trial)).min())) + 1, 8), 0
     if family == "small disc":
@@ -193,9 +193,15 @@ def first_count(data: ChordData, index: int, family: str, digits: float) -> tupl
 
 
 def initial_choices(
-    data: ChordData, digits: float, family: str | None = None, residues: frozenset[int] = frozenset()
+    data: ChordData,
+    digits: float,
+    family: str | None = None,
+    residues: frozenset[int] = frozenset(),
+    budget_digits: float | None = None,
 ) -> list[Choice]:
     """The first plan for this many digits; ``family`` forces one family for every chord it can serve.
+
+    ``budget_digits``: the digits that round-off must leave, when nodes are planned for fewer at first.
 
     Chords in ``residues`` sit on a pole and get the functional of the residue there; then only sectors whose tree has
     all of them count, and chords of no such sector get no rule that is ever built.
@@ -215,7 +221,9 @@ def initial_choices(
     strength = np.array([amplification(y, steps[0]) for y, steps in zip(data.chords, ladders, strict=True)])
     strength[list(residues)] = 0.5
     variables = sector_table(data.n).variables[sectors_with(data.n, residues)]
-    budget = 14.5 - digits  # a decade for the error to stay below the tolerance, and a bit for sums of many terms
+    budget = 14.5 - (
+        digits if budget_digits is None else budget_digits
+    )  # a decade for the error to stay below the tolerance, and a bit for sums of many terms
     for _ in range(3 * len(runs)):
         totals = strength[variables].sum(axis=1)
         row = variables[int(totals.argmax())]
@@ -253,6 +261,18 @@ def _residue_choice(data: ChordData, index: int, digits: float) -> Choice:
     if level:
         nodes = max(first_count(data, index, "disc", digits)[0], 2 * level + 8)
     return Choice(run, y, size, "residue", min(nodes, MAX_NODES), 0, f"residue at level {level}")
+
+
+def thinned(data: ChordData, choices: Sequence[Choice], digits: float) -> list[Choice]:
+    """The same families with the nodes that a first plan would take for fewer digits."""
+    found = []
+    for k, choice in enumerate(choices):
+        if choice.family == "residue":
+            found.append(choice)
+            continue
+        nodes, segment = first_count(data, k, choice.family, digits)
+        found.append(replace(choice, nodes=min(nodes, choice.nodes), segment=min(segment, choice.segment)))
+    return found
 
 
 def _choice(data: ChordData, index: int, family: str, digits: float, reason: str) -> Choice:

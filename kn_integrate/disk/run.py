@@ -88,6 +88,15 @@ class Layout:
         counts = np.array([rule.count for rule in self.rules], dtype=np.float64)
         return float(counts[self.rows[self.sectors]].prod(axis=1).sum())
 
+    def shares(self, chords: int) -> NDArray[np.float64]:
+        """For each chord the relative growth of all points when its rule gets one more node."""
+        counts = np.array([rule.count for rule in self.rules], dtype=np.float64)
+        rows = self.rows[self.sectors]
+        sector_points = counts[rows].prod(axis=1)
+        growth = np.zeros(chords)
+        np.add.at(growth, self.chord[rows], sector_points[:, None] / counts[rows])
+        return growth / sector_points.sum()
+
 
 def simple_layout(n: int, rules: Sequence[Rule]) -> Layout:
     """One rule per chord."""
