@@ -3,7 +3,9 @@ from __future__ import annotations
 import json
 import pickle
 import random
+import runpy
 from fractions import Fraction
+from pathlib import Path
 
 import mpmath
 import pytest
@@ -410,6 +412,15 @@ def test_command_names_a_pole():
     code, out, _ = run("expand", "--planar", "1.2=0,2.3=1", "--integrand", "PT(1,2,3,4)")
     assert code == 1
     assert "ON_POLE" in out
+
+
+def test_example_of_effective_couplings_runs(capsys):
+    path = Path(__file__).resolve().parents[2] / "examples" / "effective_couplings.py"
+    runpy.run_path(str(path), run_name="__main__")
+    out = capsys.readouterr().out
+    assert "F^4                      zeta(2)    x  -s12*s14" in out
+    assert "-2*s12*s14 - 2*s14^2" in out
+    assert "string scale 1/sqrt(alpha') above 773 GeV" in out
 
 
 def test_zero_integrand_expands_to_zero():
