@@ -24,6 +24,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
     "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
+    "scans": ("Scan", "ScanPoint", "ScanPoints", "ScanRow", "StoreError", "open_scan", "scan", "spaced"),
     "poles": ("LaurentSeries", "laurent_series", "plus_i_epsilon"),
 }
 _MODULE_OF = {name: module for module, names in _HOMES.items() for name in names}
@@ -40,6 +41,7 @@ if TYPE_CHECKING:
     from .kinematics import Mandelstams
     from .momenta import random_momenta
     from .poles import LaurentSeries, laurent_series, plus_i_epsilon
+    from .scans import Scan, ScanPoint, ScanPoints, ScanRow, StoreError, open_scan, scan, spaced
 
 __all__ = [
     "AlphaSeries",
@@ -55,9 +57,14 @@ __all__ = [
     "Mandelstams",
     "NotAvailableError",
     "PoleError",
+    "Scan",
+    "ScanPoint",
+    "ScanPoints",
+    "ScanRow",
     "SphereExponents",
     "SphereIntegral",
     "Status",
+    "StoreError",
     "WorkLimitError",
     "ZetaSum",
     "__version__",
@@ -66,6 +73,7 @@ __all__ = [
     "disk_integral",
     "laurent_series",
     "monomial",
+    "open_scan",
     "parke_taylor",
     "parse_integrand",
     "plus_i_epsilon",
@@ -73,6 +81,8 @@ __all__ = [
     "recognise",
     "reconstruct",
     "residue",
+    "scan",
+    "spaced",
     "zeta",
 ]
 
