@@ -1,0 +1,56 @@
+"""python-flint keeps one working precision for the whole process: this lock sets it and puts it back."""
+
+from __future__ import annotations
+
+import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
+from typing import Any
+
+from ..exact import Exact
+
+_LOCK = threading.RLock()
+
+
+@contextmanager
+def flint_precision(bits: int) -> Iterator[None]:
+    """Work with this many bits; other threads wait.
+
+    >>> import flint
+    >>> with flint_precision(200):
+    ...     flint.ctx.prec
+    200
+    """
+    import flint
+
+    with _LOCK:
+        before = flint.ctx.prec
+        flint.ctx.prec = bits
+        try:
+            yield
+        finally:
+            flint.ctx.prec = before
+
+
+def ball(x: Exact, is_complex: bool) -> Any:
+    """An exact number as a flint ball in the current precision."""
+    from flint import acb, arb, fmpq
+
+    real = arb(fmpq(x.re.numerator, x.re.denominator))
+    if not is_complex:
+        return real
+    return acb(real, arb(fmpq(x.im.numerator, x.im.denominator)))
+
+
+def as_mpmath(value: Any, bits: int) -> Any:
+    """The midpoint of a flint ball as an mpmath number that holds all its bits."""
+    import mpmath
+
+    def real(x: Any) -> Any:
+        mantissa, exponent = x.mid().man_exp()
+        return mpmath.mp.make_mpf(mpmath.libmp.from_man_exp(int(mantissa), int(exponent), bits, "n"))
+
+    if hasattr(value, "imag"):
+        re, im = real(value.real), real(value.imag)
+        return mpmath.mp.make_mpc((re._mpf_, im._mpf_))
+    return real(value)
