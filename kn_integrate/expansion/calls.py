@@ -19,7 +19,7 @@ from .numeric import GUARD, ball_of, ball_with, bits_of, fixed_zeta
 from .recursion import ball_engine
 from .relations import recognise_ball
 from .result import AlphaSeries, Coefficient
-from .specs import FEntry, Spec, check, kind_of, leading_order, read_spec, series_of
+from .specs import FEntry, Spec, check, is_uniform, kind_of, leading_order, read_spec, series_of
 from .zetas import MAX_WEIGHT, ZetaSum
 
 METHODS = ("auto", "associator", "recursion")
@@ -42,15 +42,16 @@ def alpha_expansion(
     """The low-energy expansion of a disk or sphere integral at a kinematic point.
 
     All invariants are multiplied by alpha'; weight w of the multiple zeta values stands at ``alpha'^(w - (n - 3))``, so
-    the field-theory limit is weight 0.  On the disk the integral is ``Z_P(f)``; with ``g``, or a
-    :class:`SphereIntegral`, it is ``J(f|g)`` on the sphere.  An :class:`FEntry` has weight w at ``alpha'^w``.
+    the field-theory limit is weight 0.  (With double poles in the integrand weights mix: coefficient w then still
+    stands at that power, and has zeta values of weights up to w.)  On the disk the integral is ``Z_P(f)``; with ``g``,
+    or a :class:`SphereIntegral`, it is ``J(f|g)`` on the sphere.  An :class:`FEntry` has weight w at ``alpha'^w``.
 
     Parameters
     ----------
     kin
         Massless kinematics.
     f
-        An integrand that is a sum of Parke-Taylor factors up to partial fractions, its text, an integral, or an FEntry.
+        An integrand, its text, an integral, or an FEntry.
     g
         The second integrand, for the sphere.
     ordering
@@ -78,7 +79,7 @@ def alpha_expansion(
     PoleError
         When the integral has a pole for every alpha' because a channel vanishes.
     NotAvailableError
-        For an integrand with double poles; for method="associator" at a point that is not exact.
+        For method="associator" at a point that is not exact.
 
     Notes
     -----
@@ -208,11 +209,12 @@ def _from_numbers(spec: Spec, kin: Mandelstams, weight: int, digits: int | None,
     exact: list[ZetaSum | None] = [None] * (weight + 1)
     basis = [f"a number only: {problem}"] * (weight + 1)
     if not problem:
+        uniform = is_uniform(spec)
         used = wanted
         missing = list(range(weight + 1))
         while missing:
             for w in missing:
-                found = recognise_ball(_limited(balls[w], digits), w)
+                found = recognise_ball(_limited(balls[w], digits), (w,) if uniform else range(w + 1))
                 exact[w] = found.exact
                 basis[w] = _basis_text(found, digits is not None)
             missing = [w for w in missing if exact[w] is None]

@@ -1,21 +1,25 @@
 """Expansions of disk integrals ``Z_P(f)`` around s = 0 along the ray ``alpha' s``.
 
-The weight-w term of ``Z_P(f)`` is ``alpha'^(w-(n-3))`` times a rational function of the invariants, homogeneous of
-that degree, for each product of zeta values of weight w.  Two engines give the functions F: the associator (exact), and
-the recursion in balls (numbers); this module only combines them with the field-theory trees, exactly.
+The coefficient of ``alpha'^(w-(n-3))`` is a rational function of the invariants, homogeneous of that degree, for each
+product of zeta values: of weight w when f is a combination of Parke-Taylor factors, of weight up to w when f has
+double poles.  Two engines give the functions F: the associator (exact), and the recursion in balls (numbers); this
+module only combines them with the field-theory trees, exactly.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Mapping, Sequence
+from itertools import permutations
 from typing import Any, TypeAlias
 
-from ..channels import planar_channels
-from ..errors import PoleError
+from ..channels import canonical
+from ..errors import NotAvailableError, PoleError
 from ..exact import ZERO, Exact
+from ..integrals import DiskIntegral
 from ..integrand import Integrand
 from ..kinematics import Mandelstams
 from .associator import expand_integrals
+from .by_parts import reduce_by_parts
 from .fractions import Word, chains
 from .lines import Series, through_zeros
 from .trees import Currents
@@ -59,7 +63,7 @@ def disk_series(
     kin
         Massless kinematics.
     f
-        A sum of Parke-Taylor factors up to partial fractions.
+        Any integrand that is Moebius covariant for massless legs.
     ordering
         The ordering P.
     weight
@@ -71,35 +75,51 @@ def disk_series(
     ------
     PoleError
         When a planar channel vanishes and the integral has a pole there for every alpha'.
-    NotAvailableError
-        When f has double poles.
     """
     point, integrand = in_standard_order(kin, f, ordering)
-    words = chains(point.n, integrand)
+    n = kin.n
+    words = uniform_words(n, integrand)
+
+    def at(moved: Mandelstams) -> Series:
+        orders = [words] if words is not None else reduce_by_parts(n, integrand, moved.pair, weight + 1)
+        return _combine(moved, orders, weight, engine, zero)
+
     try:
-        return _combine(point, words, weight, engine, zero)
+        return at(point)
     except ZeroDivisionError:
         pass
-    found = through_zeros(
-        point, _propagators(words), weight, lambda moved: _combine(moved, words, weight, engine, zero)
-    )
+    every = [(1, *word) for word in permutations(range(2, n))] if words is None else [(1, *word) for word in words]
+    found = through_zeros(point, _propagators(every), weight, at)
     if found is None:
-        raise _pole_error(kin, ordering)
+        raise _pole_error(kin, f, ordering)
     return found
 
 
-def _combine(kin: Mandelstams, words: Mapping[Word, Exact], weight: int, engine: Engine, zero: Any) -> Series:
+def uniform_words(n: int, f: Integrand) -> dict[Word, Exact] | None:
+    """f as a combination of Parke-Taylor factors ``PT(1, w, n)`` without kinematics; None when it has double poles."""
+    try:
+        return chains(n, f)
+    except NotAvailableError:
+        return None
+
+
+def _combine(
+    kin: Mandelstams, orders: Sequence[Mapping[Word, Exact]], weight: int, engine: Engine, zero: Any
+) -> Series:
+    """``sum_k alpha'^k sum_w c_k,w Z(1, w, n)`` on the ordering 1..n."""
     n = kin.n
     currents = Currents(kin.pair)
     total: Series = [zero] * (weight + 1)
-    if not words:
+    if not any(orders):
         return total
     for word, series in engine(kin, weight).items():
-        factor = ZERO
-        for q, c in words.items():
-            factor = factor + c * currents.numerator((1, *q), (1, *word, n - 1))
-        if factor:
-            total = [a + b * factor for a, b in zip(total, series, strict=True)]
+        for k, words in enumerate(orders):
+            factor = ZERO
+            for q, c in words.items():
+                factor = factor + c * currents.numerator((1, *q), (1, *word, n - 1))
+            if factor:
+                for w in range(k, weight + 1):
+                    total[w] = total[w] + series[w - k] * factor
     return total
 
 
@@ -112,20 +132,16 @@ def f_series(kin: Mandelstams, row: Word, column: Word, weight: int, engine: Eng
 
 
 def _propagators(words: Iterable[Word]) -> list[Word]:
-    """Every set of labels that is a propagator of some tree of some word, the whole word left out."""
+    """Every set of neighbours in some word, single labels and the whole word left out."""
     found: dict[Word, None] = {}
     for word in words:
-        full = (1, *word)
-        for size in range(2, len(full)):
-            for start in range(len(full) - size + 1):
-                found.setdefault(tuple(sorted(full[start : start + size])))
+        for size in range(2, len(word)):
+            for start in range(len(word) - size + 1):
+                found.setdefault(tuple(sorted(word[start : start + size])))
     return list(found)
 
 
-def _pole_error(kin: Mandelstams, ordering: Sequence[int]) -> PoleError:
-    order = tuple(ordering)
-    for channel in planar_channels(order):
-        x = kin.channel(channel)
-        if not x:
-            return PoleError(channel, 0, x)
-    raise AssertionError("a pole of a disk integral is planar in its ordering")
+def _pole_error(kin: Mandelstams, f: Integrand, ordering: Sequence[int]) -> PoleError:
+    poles = DiskIntegral(kin.n, f, ordering).poles(kin)
+    channel, level, x = next(pole for pole in poles if not pole[2])
+    return PoleError(canonical(channel, tuple(ordering)), level, x)

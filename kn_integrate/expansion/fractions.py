@@ -8,7 +8,7 @@ tree, and a tree is the sum of the chains in which every label comes after its p
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping, Sequence
 from functools import cache
 from typing import TypeAlias
 
@@ -124,14 +124,20 @@ def _words_of_tree(n: int, powers: _Powers) -> tuple[int, Iterable[Word]]:
     if len(seen) != n - 1:
         raise _double_pole(" ".join(f"z_{i}{j}^{k}" for (i, j), k in powers))
 
-    def below(label: int) -> list[Word]:
-        found: list[Word] = [()]
-        for child in children[label]:
-            tails = [(child, *rest) for rest in below(child)]
-            found = [mixed for word in found for tail in tails for mixed in shuffles(word, tail)]
-        return found
+    return sign, tree_words(children, 1)
 
-    return sign, below(1)
+
+def tree_words(children: Mapping[int, Sequence[int]], root: int) -> list[Word]:
+    """The words whose chains add up to a rooted tree: every label after its parent, the root left out.
+
+    >>> tree_words({1: (2, 3), 3: (4,)}, 1)
+    [(2, 3, 4), (3, 2, 4), (3, 4, 2)]
+    """
+    found: list[Word] = [()]
+    for child in children.get(root, ()):
+        tails = [(child, *rest) for rest in tree_words(children, child)]
+        found = [mixed for word in found for tail in tails for mixed in shuffles(word, tail)]
+    return found
 
 
 @cache
@@ -148,6 +154,5 @@ def shuffles(u: Word, v: Word) -> tuple[Word, ...]:
 
 def _double_pole(what: str) -> NotAvailableError:
     return NotAvailableError(
-        f"expansions need an integrand that is a sum of Parke-Taylor factors up to partial fractions; {what} is not: "
-        "reduce double poles by integration by parts first"
+        f"this needs an integrand that is a sum of Parke-Taylor factors up to partial fractions, and {what} is not"
     )

@@ -11,6 +11,7 @@ when the margin is at least ``MARGIN``; otherwise the number stays a number.
 from __future__ import annotations
 
 import math
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any
 
@@ -59,15 +60,15 @@ class Recognition:
         )
 
 
-def recognise(value: Any, weight: int, *, digits: int) -> Recognition:
-    """Look for ``value`` as a rational combination of the multiple zeta values of one weight.
+def recognise(value: Any, weight: int | tuple[int, ...], *, digits: int) -> Recognition:
+    """Look for ``value`` as a rational combination of the multiple zeta values of one weight, or of several.
 
     Parameters
     ----------
     value
         A real or complex number in any notation; all its digits count.
     weight
-        0 to 12; weight 0 means a rational number.
+        0 to 12; weight 0 means a rational number.  Several weights make a longer relation, which takes more digits.
     digits
         The value is right to within ``10^-digits`` (absolutely).
 
@@ -84,17 +85,19 @@ def recognise(value: Any, weight: int, *, digits: int) -> Recognition:
     False
     """
     number = read(value, "value")[0]
-    read_weight(weight)
+    weights = weight if isinstance(weight, tuple) else (weight,)
+    for each in weights:
+        read_weight(each)
     if isinstance(digits, bool) or not isinstance(digits, int) or not 1 <= digits <= 100_000:
         raise InputError("digits", shown(digits), "a number of correct digits from 1 to 100000")
     bits = bits_of(digits) + GUARD
     ball = Ball.of(number, bits)
-    return recognise_ball(Ball(ball.re, ball.im, ball.error + 10 * (1 << bits) // 10 ** (digits + 1), bits), weight)
+    return recognise_ball(Ball(ball.re, ball.im, ball.error + 10 * (1 << bits) // 10 ** (digits + 1), bits), weights)
 
 
-def recognise_ball(ball: Ball, weight: int) -> Recognition:
-    """Look for a ball's number as a rational combination of the multiple zeta values of one weight."""
-    products = basis(weight)
+def recognise_ball(ball: Ball, weights: Iterable[int]) -> Recognition:
+    """Look for a ball's number as a rational combination of the multiple zeta values of some weights."""
+    products = tuple(product for weight in dict.fromkeys(weights) for product in basis(weight))
     parts = [_search(part, ball.error, ball.bits, products) for part in ((ball.re, ball.im) if ball.im else (ball.re,))]
     digits = min(part.digits for part in parts)
     height = max(part.height for part in parts)

@@ -20,7 +20,7 @@ class Coefficient:
     Attributes
     ----------
     weight : int
-        The weight w of the zeta values in it.
+        The weight w of the zeta values in it; the highest one when the integrand has double poles.
     order : int
         The power of alpha' it stands at.
     value : float | complex | mpmath.mpf | mpmath.mpc

@@ -11,7 +11,7 @@ from ..errors import InputError
 from ..integrals import DiskIntegral, SphereIntegral
 from ..integrand import Integrand
 from ..kinematics import Mandelstams
-from .disk import ZERO_SUM, Engine, disk_series, exact_engine, f_series
+from .disk import ZERO_SUM, Engine, disk_series, exact_engine, f_series, uniform_words
 from .fractions import Word
 from .lines import Series
 from .sphere import sphere_series
@@ -68,6 +68,14 @@ def leading_order(spec: Spec) -> int:
 def kind_of(spec: Spec) -> str:
     """One word for the kind of integral."""
     return {DiskIntegral: "disk", SphereIntegral: "sphere", FEntry: "F"}[type(spec)]
+
+
+def is_uniform(spec: Spec) -> bool:
+    """Whether every coefficient has zeta values of one weight: no double poles."""
+    if isinstance(spec, FEntry):
+        return True
+    integrands = (spec.f,) if isinstance(spec, DiskIntegral) else (spec.f, spec.g)
+    return all(uniform_words(spec.n, each) is not None for each in integrands)
 
 
 def check(spec: Spec, kin: Mandelstams) -> None:

@@ -35,14 +35,14 @@ def sphere_series(
     zero: Any = ZERO_SUM,
     zeta2: Any = None,
 ) -> Series:
-    """The coefficients of ``J(f|g)`` by weight; weight w stands at ``alpha'^(w-(n-3))``.
+    """The coefficients of ``J(f|g)``; number w stands at ``alpha'^(w-(n-3))``.
 
     Parameters
     ----------
     kin
         Massless kinematics, ``s_ij = (alpha'/2) k_i.k_j``.
     f, g
-        Sums of Parke-Taylor factors up to partial fractions; the coefficients of g are conjugated.
+        Moebius covariant integrands; the coefficients of g are conjugated.
     weight
         The highest weight.
     engine, zero, zeta2
@@ -52,8 +52,6 @@ def sphere_series(
     ------
     PoleError
         When a channel vanishes and the integral has a pole there for every alpha'.
-    NotAvailableError
-        When an integrand has double poles.
     """
     second = Integrand(type(term)(term.coefficient.conjugate(), term.powers) for term in g.terms)
     z2 = zeta(2) if zeta2 is None else zeta2

@@ -131,12 +131,20 @@ def test_wrong_weight_is_not_recognised():
 
 def test_complex_combinations_and_zero():
     truth = zeta(5) * Exact("2/3-5j") + zeta(2) * zeta(3) * Exact("1/7")
-    found = recognise_ball(ball_of(truth, 300), 5)
+    found = recognise_ball(ball_of(truth, 300), (5,))
     assert found.exact == truth
     nothing = recognise(0, 4, digits=40)
     assert nothing.exact == ZetaSum()
     assert nothing.found
     assert "chance of an accident" in str(nothing)
+
+
+def test_sums_of_several_weights():
+    truth = zeta(3) * 7 - zeta(2) / 3 + 5
+    value = value_of(truth, 70)
+    assert recognise(value, (0, 2, 3), digits=65).exact == truth
+    assert not recognise(value, 3, digits=65).found
+    assert not recognise(value, (0, 3), digits=65).found
 
 
 def test_a_value_off_by_its_last_digits_is_not_recognised():
