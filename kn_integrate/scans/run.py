@@ -10,6 +10,7 @@ from __future__ import annotations
 import multiprocessing
 import os
 import signal
+import threading
 from collections.abc import Iterable, Iterator, Sequence
 from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Executor, Future, ProcessPoolExecutor, wait
 from contextlib import contextmanager
@@ -191,7 +192,7 @@ def _collect(
 @contextmanager
 def _own_processes(workers: int) -> Iterator[Executor]:
     """A pool of fresh processes (spawn: a fork would copy locks and threads in whatever state they are)."""
-    pool = ProcessPoolExecutor(workers, mp_context=multiprocessing.get_context("spawn"), initializer=_ignore_ctrl_c)
+    pool = ProcessPoolExecutor(workers, mp_context=multiprocessing.get_context("spawn"), initializer=_prepare_worker)
     try:
         yield pool
     except BaseException:
@@ -204,6 +205,18 @@ def _own_processes(workers: int) -> Iterator[Executor]:
     pool.shutdown()
 
 
-def _ignore_ctrl_c() -> None:
-    """In a worker: the terminal sends Ctrl-C to the whole group, and the process that asked will end the worker."""
+def _prepare_worker() -> None:
+    """In a worker: leave Ctrl-C to the process that asked, and end with it, even when it was killed.
+
+    The terminal sends Ctrl-C to the whole group.  And the pipe a worker waits on has its other end in the worker too,
+    so that it would wait for ever for a process that is gone.
+    """
     signal.signal(signal.SIGINT, signal.SIG_IGN)
+    parent = multiprocessing.parent_process()
+    if parent is not None:
+        threading.Thread(target=_end_with, args=(parent,), daemon=True).start()
+
+
+def _end_with(parent: Any) -> None:
+    parent.join()
+    os._exit(1)

@@ -1,0 +1,75 @@
+"""``kn-integrate scan``: an integral at many points, into a file from which it can go on."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+from .. import inputs
+from ..errors import InputError
+from ..jobs import INTEGRAND, KINEMATICS, ORDERING, Field, Job, accuracy
+from ..progress import FACES
+from ..report.outcome import Outcome
+from ._points import ON, POINTS, SECOND, points_of, spec_of
+from ._verb import verb
+
+STORE = Field("scan", "store", inputs.text, "FILE", "The SQLite file with the results; gone on with if it is there.")
+WORKERS = Field("scan", "workers", inputs.count, "N", "Number of processes; the results do not depend on it [1].")
+CSV = Field("scan", "csv", inputs.text, "FILE", "Write all rows as CSV.")
+JSON = Field("scan", "json", inputs.text, "FILE", "Write all rows as JSON, with kinematics and versions.")
+PROGRESS = Field("scan", "progress", inputs.choice(*FACES), "|".join(FACES), "How progress is shown [auto].")
+
+_ACCURACY = tuple(field for field in accuracy("auto", "quadrature", "kz", "direct", "klt") if field.key != "threads")
+
+
+@verb(*KINEMATICS, INTEGRAND, SECOND, ORDERING, ON, *POINTS, STORE, WORKERS, CSV, JSON, PROGRESS, *_ACCURACY)
+def scan(job: Job) -> Outcome:
+    """An integral on a line, on a grid, on a random sample, or at the points of a table.
+
+    Interrupted or killed, the same command goes on where it stopped. Points on a pole are rows of their own status.
+
+    \b
+    Examples:
+      kn-integrate scan --planar 1.2=1/10,2.3=2/5 --to 1.2=9/10 --count 9 --integrand "PT(1,2,3,4)" --store a.sqlite
+      kn-integrate scan --planar 2.3=2/5 --grid 1.2=1/10:9/10:9 --integrand "PT(1,2,3,4)" --store b.sqlite
+    """
+    path = job.get(STORE)
+    if path is None:
+        raise InputError(STORE.option, "nothing", "the file for the results, such as scan.sqlite")
+    points = points_of(job)
+    spec = spec_of(job, points[0].place.n)
+    from ..scans import scan as run
+
+    try:
+        found = run(
+            points,
+            spec,
+            store=path,
+            workers=job.get(WORKERS) or 1,
+            progress=job.get(PROGRESS) or "auto",
+            **job.table("accuracy"),
+        )
+    except KeyboardInterrupt:
+        click.echo(f"\nstopped; what was finished is in {path}, run the same command again to go on", err=True)
+        raise
+    for field, write in ((CSV, found.to_csv), (JSON, found.to_json)):
+        if job.get(field) is not None:
+            write(Path(job.get(field)))
+    rows = [("store", path), ("points", f"{len(found)} of {found.total}")]
+    rows += [(f"status {status}", str(count)) for status, count in found.counts.items()]
+    files = {field.key: job.get(field) for field in (CSV, JSON) if job.get(field) is not None}
+    rows += list(files.items())
+    document = {
+        "store": path,
+        "points": found.total,
+        "finished": len(found),
+        "ok": found.ok,
+        "counts": found.counts,
+        "hash": found.rows[0].job,
+        **files,
+    }
+    return Outcome(tuple(rows), document, found.ok)
+
+
+command = scan
