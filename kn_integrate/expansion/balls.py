@@ -5,6 +5,7 @@ No global precision is involved, so results are the same bits in any thread, and
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import Any
 
@@ -59,6 +60,10 @@ class Ball:
         inverse: Exact = Exact(1) / other
         return self * inverse
 
+    def times_power_of_two(self, exponent: int) -> Ball:
+        """Exactly ``2^exponent`` times the ball: only the place of the point moves."""
+        return Ball(self.re, self.im, self.error, self.bits - exponent)
+
     def contains_zero(self) -> bool:
         """Whether zero is within the error."""
         return abs(self.re) <= self.error and abs(self.im) <= self.error
@@ -83,4 +88,6 @@ class Ball:
         excess = max(0, self.error.bit_length() - 60)
         mantissa = (self.error >> excess) + 1
         exponent = excess - self.bits
+        if exponent > 900:
+            return math.inf
         return max(1.4142135623730952 * mantissa * 2.0 ** max(exponent, -1100), 5e-324)

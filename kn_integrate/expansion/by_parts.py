@@ -10,8 +10,8 @@ with Omega linear in the invariants: moving the whole chain of v along with v le
 a in the chain of v and b in the chain of p, and on the path v..a b..p one of the differences can be cancelled against
 ``z_v - z_p``.  (This is the Knizhnik-Zamolodchikov connection, in a form that divides by nothing.)  A total derivative
 of ``x (z_v - z_p)^(1-m) F`` lowers a pole of order m >= 2, if ``x (1 - m + Omega^p)`` is its coefficient; likewise
-powers ``(z_v - z_1)^k`` through ``k + 1 + sum_p Omega^p``.  In a power series in alpha' both inverses divide by integers
-only.  What is left has simple poles: v hangs on p.
+powers ``(z_v - z_1)^k`` through ``k + 1 + sum_p Omega^p``.  In a power series in alpha' both inverses divide by
+integers only.  What is left has simple poles: v hangs on p.
 
 Coefficients are therefore power series in alpha', with the k-th one a homogeneous polynomial of degree k in the
 invariants.  (Integration by parts among Parke-Taylor factors: He, Teng, Zhang 2018, arXiv:1812.03369; reduction

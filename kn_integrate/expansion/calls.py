@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from math import lcm
+from fractions import Fraction
+from math import factorial, gcd, lcm
 from typing import Any
 
-from ..errors import InputError, KNError, NotAvailableError
-from ..exact import read_integer
+from ..errors import InputError, KNError, NotAvailableError, WorkLimitError
+from ..exact import Exact, read_integer
 from ..integrals import DiskIntegral, SphereIntegral
 from ..integrand import Integrand
 from ..kinematics import Mandelstams
@@ -24,6 +25,7 @@ from .zetas import MAX_WEIGHT, ZetaSum
 
 METHODS = ("auto", "associator", "recursion")
 MAX_DIGITS = 2000
+MAX_WORK = 1e8  # about a microsecond each
 EXACT_DENOMINATOR = 10**12  # beyond this a rational point is a rounded one, and its exact coefficients are of no use
 _CONFIRM_DISK, _CONFIRM_SPHERE = 7, 6  # the largest n for which "auto" runs the second engine too
 _CONFIRM_DIGITS = 30
@@ -78,6 +80,8 @@ def alpha_expansion(
         For kinematics that are not massless, an integrand that is not Moebius covariant, a bad weight or ordering.
     PoleError
         When the integral has a pole for every alpha' because a channel vanishes.
+    WorkLimitError
+        For too many legs at too high a weight.
     NotAvailableError
         For method="associator" at a point that is not exact.
 
@@ -105,12 +109,23 @@ def alpha_expansion(
     if method not in METHODS:
         raise InputError("method", shown(method), "one of " + ", ".join(METHODS))
     check(spec, kin)
+    _limit_work(spec, top)
     problem = _not_exact(kin)
     if method == "associator" and problem:
         raise NotAvailableError(f"method='associator' needs an exact point: {problem}")
     if method == "recursion" or problem:
         return _from_numbers(spec, kin, top, digits, problem)
     return _from_words(spec, kin, top, digits, method == "auto")
+
+
+def _limit_work(spec: Spec, weight: int) -> None:
+    """Refuse what would take hours: products of a matrix entry and a number, over all words of all steps."""
+    m = spec.n - 4
+    entries = factorial(m) * ((3 ** (m + 1) - 1) // 4 + 1)
+    runs = 2 * factorial(spec.n - 3) if isinstance(spec, SphereIntegral) else 1
+    work = runs * entries * 2**weight
+    if work > MAX_WORK:
+        raise WorkLimitError(work, MAX_WORK, "exact products", "lower weight=")
 
 
 def _not_exact(kin: Mandelstams) -> str:
@@ -158,36 +173,62 @@ def _rounded(ball: Ball, digits: int | None) -> tuple[Any, float]:
     """The number a caller gets, and a bound on its error, the rounding included."""
     if ball.contains_zero():  # no digit is known; what the midpoint is says nothing
         around = Ball(0, 0, max(abs(ball.re), abs(ball.im)) + ball.error, ball.bits)
+        if digits is None and not around.error_number() < 1e308:
+            raise InputError("digits", "None", "digits=, for a coefficient beyond the range of doubles")
         return (0.0 if digits is None else around.number(digits)), around.error_number()
     number = ball.number(20 if digits is None else digits)
     size = float(abs(number))
     if digits is None:
+        if not size < 1e308:
+            raise InputError("digits", "None", "digits=, for a coefficient beyond the range of doubles")
         plain: Any = complex(number) if ball.im else float(number)
         return plain, ball.error_number() + size * 2.0**-52
     return number, ball.error_number() + size * 2.0 ** -min(bits_of(digits), 1000)
 
 
 def _confirm(spec: Spec, kin: Mandelstams, weight: int, exact: Series) -> int:
-    """Compare with the second engine; the number of digits, of the largest coefficient of each weight, that agree."""
+    """Compare with the second engine; the number of digits, of the coefficient itself, in which all of them agree."""
+    point, scale = _near_one(kin)
     bits = bits_of(_CONFIRM_DIGITS) + GUARD + _growth(kin, weight)
-    numbers = _ball_series(spec, kin, weight, bits)
-    worst = float("inf")
-    for w, (value, ball) in enumerate(zip(exact, numbers, strict=True)):
-        difference = ball_of(value, bits) - ball
+    worst = 10.0 * _CONFIRM_DIGITS
+    for w, (value, ball) in enumerate(zip(exact, _ball_series(spec, point, weight, bits), strict=True)):
+        derived = ball_of(value * Exact(Fraction(2) ** (-scale * (w + leading_order(spec)))), bits)
+        difference = derived - ball
         if not difference.contains_zero():
             raise KNError(f"two derivations of the coefficient of weight {w} disagree; please report this point")
         if value:
             worst = min(worst, (ball.magnitude.bit_length() - difference.error.bit_length()) * 0.30103)
-    return int(min(worst, 10 * _CONFIRM_DIGITS))
+    return max(int(worst), 0)
 
 
 # --- numbers --------------------------------------------------------------------------------------------------------
 
 
+def _near_one(kin: Mandelstams) -> tuple[Mandelstams, int]:
+    """The point scaled so that the largest invariant is about 1, and the binary exponent of what it was.
+
+    Coefficients are homogeneous, so this loses nothing, and numbers with a fixed number of bits like it.
+    """
+    scale = 0
+    for value in kin.pairs:
+        p, q, d = value.as_ratio()
+        if value:
+            size = max(abs(p), abs(q)).bit_length() - d.bit_length()
+            scale = size if not scale else max(scale, size)
+    return (kin.scaled(Exact(Fraction(2) ** -scale)) if scale else kin), scale
+
+
+def _content(kin: Mandelstams) -> Exact:
+    """The largest rational number of which all invariants are integer multiples."""
+    ratios = [value.as_ratio() for value in kin.pairs]
+    bottom = lcm(*(d for _, _, d in ratios))
+    top = gcd(*(part * (bottom // d) for p, q, d in ratios for part in (p, q)))
+    return Exact(Fraction(top or 1, bottom))
+
+
 def _growth(kin: Mandelstams, weight: int) -> int:
-    """Bits that numbers of the recursion lose: the invariants to the power of the weight, and some."""
-    size = max(2.0, *(abs(value) for value in kin.pairs)) * kin.n
-    return int((weight + kin.n) * (len(bin(int(size))) - 1)) + 8
+    """Bits that numbers of the recursion lose at invariants of about 1, roughly; too few only cost a second run."""
+    return (weight + kin.n) * kin.n.bit_length() + 8
 
 
 def _ball_series(spec: Spec, kin: Mandelstams, weight: int, bits: int) -> Series:
@@ -204,29 +245,36 @@ def _ball_series(spec: Spec, kin: Mandelstams, weight: int, bits: int) -> Series
 
 def _from_numbers(spec: Spec, kin: Mandelstams, weight: int, digits: int | None, problem: str) -> AlphaSeries:
     wanted = 20 if digits is None else digits
-    series = _with_digits(spec, kin, weight, wanted)
+    point, scale = _near_one(kin)
+    series = _with_digits(spec, point, weight, wanted)
     balls = list(series)
     exact: list[ZetaSum | None] = [None] * (weight + 1)
     basis = [f"a number only: {problem}"] * (weight + 1)
     if not problem:
         uniform = is_uniform(spec)
+        content = _content(kin)
+        # relations are looked for at coprime integer invariants, where they have the smallest integers
+        to_integers = Exact(Fraction(2) ** scale) / content
         used = wanted
         missing = list(range(weight + 1))
         while missing:
             for w in missing:
-                found = recognise_ball(_limited(balls[w], digits), (w,) if uniform else range(w + 1))
-                exact[w] = found.exact
+                order = w + leading_order(spec)
+                ball = _limited(balls[w], digits) * to_integers**order
+                found = recognise_ball(ball, (w,) if uniform else range(w + 1))
+                exact[w] = None if found.exact is None else found.exact * content**order
                 basis[w] = _basis_text(found, digits is not None)
             missing = [w for w in missing if exact[w] is None]
             # with digits= given these are all there are; otherwise take more while that is cheap
             if digits is not None or used >= 500 or not missing:
                 break
             used = 60 if used < 60 else 2 * used
-            balls = _with_digits(spec, kin, weight, used)
+            balls = _with_digits(spec, point, weight, used)
     coefficients = []
     for w, ball in enumerate(series):
-        number, error = _rounded(ball, digits)
-        coefficients.append(Coefficient(w, w + leading_order(spec), number, error, exact[w], digits, basis[w]))
+        order = w + leading_order(spec)
+        number, error = _rounded(ball.times_power_of_two(scale * order), digits)
+        coefficients.append(Coefficient(w, order, number, error, exact[w], digits, basis[w]))
     method = "recursion" + ("+klt" if isinstance(spec, SphereIntegral) else "") + ("" if problem else "+relations")
     return AlphaSeries(kin.n, leading_order(spec), _described(spec, kin), tuple(coefficients), method)
 

@@ -18,6 +18,7 @@ floating point, bound the growth of every rounding (one unit at each division) a
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from math import lcm
 from typing import TypeAlias
@@ -190,7 +191,7 @@ def _half_power(rho: Sparse, vectors: Orders, errors: Bounds, norm: float, d: in
     result = [list(v) for v in vectors]
     bounds = list(errors)
     power, power_bounds = vectors, list(errors)
-    sizes = [max((abs(c) for c in v), default=0) / 2.0**bits * _SLACK for v in vectors]
+    sizes = [max((abs(c) for c in v), default=0) / (1 << bits) * _SLACK for v in vectors]
     for j in range(1, len(vectors)):
         shifted = [[0] * len(vectors[0])]
         for vector in power[:-1]:
@@ -218,7 +219,7 @@ def ball_engine(kin: Mandelstams, weight: int, bits: int) -> dict[Word, list[Bal
     Parameters
     ----------
     kin
-        Massless kinematics, taken exactly.
+        Massless kinematics, taken exactly; invariants of about 1 or less, for bounds that stay in the range of doubles.
     weight
         The highest order.
     bits
@@ -245,7 +246,8 @@ def ball_engine(kin: Mandelstams, weight: int, bits: int) -> dict[Word, list[Bal
                 padded += vector[block * count : (block + 1) * count] + [0] * (size - count)
             start.append(padded)
         sizes = [
-            max(abs(c) for c in v) / 2.0**bits * _SLACK + e / 2.0**bits for v, e in zip(start, errors, strict=True)
+            max(abs(c) for c in v) / (1 << bits) * _SLACK + math.ldexp(e, -bits)
+            for v, e in zip(start, errors, strict=True)
         ]
         near, extra = _left(numbers, start, bits)
         r = _right(numbers, near, bits)

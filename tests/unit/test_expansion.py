@@ -216,6 +216,26 @@ def test_numbers_have_the_digits_and_errors_they_claim():
 # --- what coefficients rest on ----------------------------------------------------------------------------------------
 
 
+@pytest.mark.parametrize("size", [Exact(10) ** 40, Exact(1) / Exact(10) ** 11])
+def test_large_and_small_invariants(size):
+    kin = Mandelstams.from_planar(5, {(1, 2): 2, (2, 3): 3, (3, 4): 5, (4, 5): 7, (5, 1): 11})
+    base = alpha_expansion(kin, parke_taylor(1, 2, 3, 4, 5), weight=5)
+    for method in ("auto", "recursion"):
+        series = alpha_expansion(kin.scaled(size), parke_taylor(1, 2, 3, 4, 5), weight=5, method=method)
+        for c, d in zip(series, base, strict=True):
+            assert c.exact == d.exact * size**d.order
+    with pytest.raises(InputError, match="digits="):
+        alpha_expansion(kin.scaled(Exact(10) ** 90), FEntry(5), weight=8)
+
+
+def test_many_digits():
+    value = alpha_expansion(KIN5, FEntry(5), weight=3, digits=700, method="recursion")
+    with mpmath.workdps(720):
+        assert abs(value[3].value - 576 * mpmath.zeta(3)) < mpmath.mpf(10) ** -695
+        assert abs(value[2].value + 47 * mpmath.zeta(2)) <= mpmath.mpf(10) ** -697
+    assert value.is_exact
+
+
 def test_auto_confirms_and_says_so():
     series = alpha_expansion(KIN5, parke_taylor(1, 2, 3, 4, 5), weight=4)
     assert series.method == "associator+recursion"
@@ -349,7 +369,14 @@ def test_reconstruction_refuses_bad_input(bad, match):
         bad()
 
 
-def test_reconstruction_refuses_work_without_end():
+def test_work_without_end_is_refused_before_it_starts():
+    with pytest.raises(WorkLimitError, match="exact products"):
+        alpha_expansion(Mandelstams.random(11, 1), FEntry(11), weight=8)
+    f = parke_taylor(*range(1, 10))
+    with pytest.raises(WorkLimitError, match="exact products"):
+        alpha_expansion(Mandelstams.random(9, 1), f, f, weight=8)
+    with pytest.raises(NotAvailableError, match="partial fractions"):
+        reconstruct("PT(1,2)*PT(3,4)", n=4, zeta=zeta(3))
     with pytest.raises(WorkLimitError, match="monomials"):
         reconstruct(parke_taylor(1, 2, 3, 4, 5, 6), n=6, zeta=zeta(3))
 
