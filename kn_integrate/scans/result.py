@@ -14,6 +14,7 @@ from typing import Any
 
 from ..errors import InputError, NotAvailableError, Status
 from ..integrals import DiskIntegral, SphereIntegral
+from ..report.text import number_text
 from .points import Place, place_of
 from .store import read_store
 from .task import canonical, spec_of
@@ -75,13 +76,10 @@ class ScanRow:
             return None
         if self.digits is None:
             return float(self.real) if self.imaginary is None else complex(float(self.real), float(self.imaginary))
+        parts = [_read_many(text, self.digits) for text in (self.real, self.imaginary) if text is not None]
         import mpmath
 
-        context = mpmath.MPContext()
-        context.prec = 64 + int(3.33 * max(len(self.real), len(self.imaginary or "")))
-        if self.imaginary is None:
-            return mpmath.mp.make_mpf(context.mpf(self.real)._mpf_)
-        return mpmath.mp.make_mpc((context.mpf(self.real)._mpf_, context.mpf(self.imaginary)._mpf_))
+        return mpmath.mp.make_mpf(parts[0]) if self.imaginary is None else mpmath.mp.make_mpc(tuple(parts))
 
     @property
     def error(self) -> float | None:
@@ -253,6 +251,29 @@ def open_scan(path: str | Path) -> Scan:
             )
         )
     return Scan(str(path), task, total, tuple(rows))
+
+
+def _read_many(text: str, digits: int) -> Any:
+    """The multiple-precision number whose text this is, bit for bit.
+
+    The text has two digits more than its mantissa needs, so rounding it to that many bits gives the mantissa back;
+    where zeros at its end were dropped the precision is not known, and the first one that gives the text again is it.
+    """
+    import mpmath
+
+    context = mpmath.MPContext()
+    figures = len(text.lower().partition("e")[0].replace("-", "").replace(".", "").strip("0"))
+    least = max(int((figures - 2) / _DIGITS_PER_BIT), 8)
+    for precision in range(least, least + 64):
+        context.prec = precision
+        found = context.mpf(text)._mpf_
+        if number_text(mpmath.mp.make_mpf(found), digits) == text:
+            return found
+    context.prec = least + 64  # a text of other origin: nothing of it is lost
+    return context.mpf(text)._mpf_
+
+
+_DIGITS_PER_BIT = 0.30102999566398120
 
 
 def _written(text: str, path: str | Path | None) -> str:
