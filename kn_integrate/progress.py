@@ -7,6 +7,7 @@ one left.
 
 from __future__ import annotations
 
+import os
 import sys
 import time
 from collections.abc import Callable
@@ -65,7 +66,9 @@ class Progress:
         elif self.face == "bar":
             from tqdm import tqdm
 
-            self._bar = tqdm(file=self.stream, dynamic_ncols=True, **options)
+            # A terminal that does not tell its size gets a bar for a usual one (tqdm would show nothing there).
+            width = {"dynamic_ncols": True} if _columns(self.stream) else {"ncols": 80, "nrows": 24}
+            self._bar = tqdm(file=self.stream, **width, **options)
         elif self.face == "lines":
             self._say(f"{self.name}: {self.done} of {self.total} there, {self.total - self.done} to do")
         return self
@@ -118,6 +121,13 @@ def chosen_face(stream: TextIO) -> str:
             return "bar"
         return "notebook"
     return "bar" if stream.isatty() else "lines"
+
+
+def _columns(stream: TextIO) -> int:
+    try:
+        return os.get_terminal_size(stream.fileno()).columns
+    except (OSError, ValueError):  # no terminal, no file
+        return 0
 
 
 def _in_notebook() -> bool:
