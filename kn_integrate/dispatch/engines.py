@@ -54,9 +54,9 @@ def evaluate(n: int, terms: Sequence[Term], request: Request) -> Estimate:
 def _kz(n: int, terms: Sequence[Term], request: Request, escalate: bool) -> Estimate:
     if n > MAX_KZ:
         raise NotAvailableError(f"method 'kz' goes up to n = {MAX_KZ}; use method='quadrature'")
-    from ..kz import integral as kz  # loads the compiler
+    from ..kz.integral import integrate_terms as by_series  # loads the compiler
 
-    return kz.integrate_terms(n, terms, rtol=request.rtol, atol=request.atol, digits=request.digits, escalate=escalate)
+    return by_series(n, terms, rtol=request.rtol, atol=request.atol, digits=request.digits, escalate=escalate)
 
 
 def _quadrature(n: int, terms: Sequence[Term], request: Request) -> Estimate:
@@ -85,9 +85,9 @@ def _auto(n: int, terms: Sequence[Term], request: Request) -> Estimate:
     what = f"predicted {seconds:.2g} s by quadrature"
     quadrature_first = seconds <= AT_ONCE
     if not quadrature_first:
-        from ..kz import integral as kz
+        from ..kz.integral import predict as predict_series
 
-        series = kz.predict(n, terms, rtol=request.rtol, digits=None)
+        series = predict_series(n, terms, rtol=request.rtol, digits=None)
         quadrature_first = seconds <= series
         what += f", {series:.2g} s by series"
     first, second = (_quadrature, _kz_auto) if quadrature_first else (_kz_auto, _quadrature)

@@ -20,6 +20,9 @@ from dataclasses import dataclass
 from functools import cache
 from typing import Any
 
+import numpy as np
+from numpy.typing import NDArray
+
 Word = tuple[int, ...]
 
 
@@ -95,3 +98,63 @@ def amputated(letters: Sequence[int], channel: Callable[[Word], Any], zero: Any,
                 phi[start, size] = [value / total for value in values]
     words = separable(length).words
     return {tuple(letters[k] for k in word): value for word, value in zip(words, top, strict=True)}
+
+
+@dataclass(frozen=True)
+class _Flat:
+    """The splits of one length as arrays: which products to form for each p, and how to sum them word by word."""
+
+    pairs: tuple[tuple[int, NDArray[np.int64], NDArray[np.int64], NDArray[np.float64]], ...]
+    order: NDArray[np.int64]
+    starts: NDArray[np.int64]
+
+
+@cache
+def _flat(length: int) -> _Flat:
+    shape = separable(length)
+    columns: dict[int, list[tuple[int, int, int, int]]] = {}
+    for word, ways in enumerate(shape.splits):
+        for p, sign, i, j in ways:
+            columns.setdefault(p, []).append((word, sign, i, j))
+    pairs, words = [], []
+    for p, rows in columns.items():
+        table = np.array(rows, dtype=np.int64)
+        pairs.append((p, table[:, 2], table[:, 3], table[:, 1].astype(float)[:, None]))
+        words.append(table[:, 0])
+    every = np.concatenate(words)
+    order = np.argsort(every, kind="stable")
+    return _Flat(tuple(pairs), order, np.flatnonzero(np.diff(every[order], prepend=-1)))
+
+
+def amputated_lanes(letters: Sequence[int], channel: Callable[[Word], NDArray[Any]]) -> NDArray[Any]:
+    """:func:`amputated` for arrays of values: one row for each word of ``separable(len(letters))``, one column a lane.
+
+    ``channel`` gives an array with one entry a lane.
+    """
+    length = len(letters)
+    lanes = channel(tuple(letters[:2]))
+    one = np.ones((1, len(lanes)), dtype=lanes.dtype)
+    phi = {(k, 1): one for k in range(length)}
+    for size in range(2, length + 1):
+        flat = _flat(size)
+        for start in range(length - size + 1):
+            parts = [sign * phi[start, p][i] * phi[start + p, size - p][j] for p, i, j, sign in flat.pairs]
+            values = np.add.reduceat(np.concatenate(parts)[flat.order], flat.starts, axis=0)
+            phi[start, size] = values if size == length else values / channel(tuple(letters[start : start + size]))
+    return phi[0, length]
+
+
+@cache
+def closed_words(length: int) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """The separable words that start with the first letter and end with the last: their numbers, and the numbers of
+    what stands between among the permutations of the letters in between.
+    """
+    from itertools import permutations
+
+    place = {word: k for k, word in enumerate(permutations(range(1, length - 1)))}
+    numbers, targets = [], []
+    for k, word in enumerate(separable(length).words):
+        if word[0] == 0 and word[-1] == length - 1:
+            numbers.append(k)
+            targets.append(place[word[1:-1]])
+    return np.array(numbers), np.array(targets)

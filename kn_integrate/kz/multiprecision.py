@@ -131,7 +131,9 @@ def _quotient(value: Any, by: Any) -> Any:
 
 
 def _real(value: Any) -> float:
-    return float((value.real if hasattr(value, "imag") else value).mid())
+    from flint import acb
+
+    return float((value.real if isinstance(value, acb) else value).mid())
 
 
 def _count(growth: float, epsilon: float) -> int:

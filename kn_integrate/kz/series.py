@@ -30,27 +30,27 @@ def terms_needed(decay: float, growth: float, epsilon: float) -> int:
     return math.ceil(k) + 2
 
 
-def f_vector(point: Point, noise: float = 0.0, seed: int = 1) -> NDArray[Any]:
-    """All ``F_w = int prod |z_ij|^{s_ij} D_1(w)`` over ``0 < z_2 < ... < z_{n-2} < 1``.
+LANES = 4
+
+
+def f_vector(point: Point, noise: float, seed: int) -> NDArray[Any]:
+    """All ``F_w = int prod |z_ij|^{s_ij} D_1(w)`` over ``0 < z_2 < ... < z_{n-2} < 1``, in four lanes.
 
     Parameters
     ----------
     point
         Massless kinematics of at least 4 legs.
     noise, seed
-        Relative size and seed of the artificial rounding; 0 for none.
+        Relative size and seed of the artificial rounding in lanes 1..3.
 
     Returns
     -------
-    ((n-3)!,) array
-        In the order of the permutations of the labels 2..n-2; not finite at an exact resonance.
+    ((n-3)!, 4) array
+        In the order of the permutations of the labels 2..n-2; lane 0 is the result; not finite at an exact resonance.
     """
     s = point.table()
     generator = np.random.default_rng(seed)
-    if noise:
-        shake = generator.uniform(-1.0, 1.0, s.shape)
-        s = s * (1.0 + noise * (np.triu(shake) + np.triu(shake).T))
-    f = np.ones(1, dtype=s.dtype)
+    f = np.ones((1, LANES), dtype=s.dtype)
     with np.errstate(all="ignore"):
         for legs in range(3, point.n):
             f = _step(legs, point, s, f, noise, generator)
@@ -98,33 +98,29 @@ def _step(legs: int, point: Point, s: NDArray[Any], start: NDArray[Any], noise: 
     a_whole, a_rest = _split_rows(a, {mask: rho - value for mask, value in lambdas.items()}, s.dtype)
     b_whole, b_rest = _split_rows(b, mus, s.dtype)
     rho_whole, rho_rest = split(rho)
-    if noise:
-        a_rest = a_rest * (1.0 + noise * generator.uniform(-1.0, 1.0, len(a_rest)))
-        b_rest = b_rest * (1.0 + noise * generator.uniform(-1.0, 1.0, len(b_rest)))
     rho_value = rho.value()
     a_diagonal = rho_value - (a_whole + a_rest)
     b_diagonal = b_whole + b_rest
     rows = len(pattern.splits)
-    c = np.zeros(rows, dtype=s.dtype)
+    c = np.zeros((rows, LANES), dtype=s.dtype)
     c[pattern.full] = start
     growth = max(0.0, float(a_diagonal.real.max())) + max(0.0, -float(b_diagonal.real.min()))
     count = terms_needed(HALF, growth, 1e-18)
-    total, work, series, extra, u, tail = (np.zeros(rows, dtype=s.dtype) for _ in range(6))
+    total, work, series, extra, u, tail = (np.zeros((rows, LANES), dtype=s.dtype) for _ in range(6))
     seeds = generator.integers(1, 2**40, 2)
     left_series(
         rho_whole, s.dtype.type(rho_rest), HALF, count, noise, seeds[0], c, total, work, series, extra,
         a.start, a.column, a_value, a_whole, a_rest, a.order, b.start, b.column, b_value, b_diagonal,
     )  # fmt: skip
-    factor = HALF**rho_value
+    shake = np.zeros((rows, LANES))
+    shake[:, 1:] = noise * generator.uniform(-1.0, 1.0, (rows, LANES - 1))
+    # the factor x^rho carries the rounding of rho, the sum of the two halves that of its terms
+    factor = HALF**rho_value * (1.0 + shake[0] * (1.0 + abs(rho_value)))
     right_series(
         1.0 - HALF, count, noise, seeds[1], factor * series, u, tail,
         a.start, a.column, a_value, a_diagonal, b.start, b.column, b_value, b_whole, b_rest, b.order,
     )  # fmt: skip
-    if noise:
-        # the factor x^rho carries the rounding of rho, the sum of the two halves that of its terms
-        factor = factor * (1.0 + noise * generator.uniform(-1.0, 1.0) * (1.0 + abs(rho_value)))
-    y = factor * (series + extra) + tail
-    if noise:
-        y = y + noise * generator.uniform(-1.0, 1.0, rows) * (abs(factor) * (abs(series) + abs(extra)) + abs(tail))
-    result: NDArray[Any] = pattern.target_sign * y[pattern.target]
+    size = abs(factor) * (abs(series) + abs(extra)) + abs(tail)
+    y = factor * (series + extra) + tail + shake * size
+    result: NDArray[Any] = pattern.target_sign[:, None] * y[pattern.target]
     return result

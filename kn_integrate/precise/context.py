@@ -45,12 +45,13 @@ def ball(x: Exact, is_complex: bool) -> Any:
 def as_mpmath(value: Any, bits: int) -> Any:
     """The midpoint of a flint ball as an mpmath number that holds all its bits."""
     import mpmath
+    from flint import acb
 
     def real(x: Any) -> Any:
         mantissa, exponent = x.mid().man_exp()
         return mpmath.mp.make_mpf(mpmath.libmp.from_man_exp(int(mantissa), int(exponent), bits, "n"))
 
-    if hasattr(value, "imag"):
+    if isinstance(value, acb):
         re, im = real(value.real), real(value.imag)
         return mpmath.mp.make_mpc((re._mpf_, im._mpf_))
     return real(value)

@@ -104,7 +104,7 @@ def _closed(group: Group, rng: np.random.Generator) -> tuple[bool, float, float,
     rtol = tolerance(rng, case.n)
     result = integrate_pairs(case.n, tuple(case.pairs.flat), rtol, 0.0, max_points=group.limit)
     value = case.value(25)
-    size = abs(value)
+    size = abs(value) or mpmath.mpf(1)  # an exact zero is measured absolutely
     with mpmath.workdps(30):
         true = float(abs(mpmath.mpmathify(result.value) - value) / size) if math.isfinite(abs(result.value)) else 0.0
     return result.error <= rtol * abs(result.value), float(result.error / size), true, rtol
