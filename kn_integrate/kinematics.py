@@ -116,8 +116,8 @@ class Mandelstams:
         n
             Number of legs.
         channels
-            The key is the tuple of *all* labels of the channel.  With massless legs the complement may be given
-            instead; a channel given twice must agree.
+            The key is the tuple of *all* labels of the channel.  With massless legs the complement (the side with
+            more labels) may be given instead; a channel given twice must agree.
         ordering
             The ordering in which the channels are planar; 1..n when None.
         row_sums, string
@@ -136,13 +136,15 @@ class Mandelstams:
         for labels, raw in _items(channels, "channels"):
             name = _planar_key(labels, n, order)
             proper = canonical(name, order)
-            if proper != name and not massless:
+            if proper != name and not massless and 2 * len(name) != n:
                 raise InputError(
                     f"channel {dotted(name)}",
                     "the complement of a channel, with legs that are not massless",
                     f"{dotted(proper)} (X of a channel and of its complement differ by row sums)",
                 )
             value, rounded = read(raw, f"X_{dotted(name)}")
+            if proper != name and not massless:  # half of the legs: neither side is the complement of the other
+                value = value - _row_difference(name, proper, rows)
             if proper in found:
                 other, other_rounded = found[proper]
                 slack = SLACK * max(abs(value), abs(other)) if rounded or other_rounded else 0.0

@@ -232,7 +232,7 @@ def test_info_of_a_job_for_an_unknown_verb(tmp_path):
     (tmp_path / "job.toml").write_text('version = 1\nverb = "dsik"\n')
     done = run("info", str(tmp_path / "job.toml"))
     assert done.code == 2
-    assert "verb: found 'dsik'; expected one of disk" in done.err
+    assert "verb: found 'dsik'; expected one of " in done.err
 
 
 def test_a_closed_pipe_is_no_traceback():
