@@ -24,6 +24,9 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
     "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
+    "plots.energy_line": ("EnergyLine", "energy_line"),
+    "plots.error_budget": ("ErrorBudget", "error_budget"),
+    "plots.pole_map": ("PoleMap", "pole_map"),
     "scans": ("Scan", "ScanPoint", "ScanPoints", "ScanRow", "StoreError", "open_scan", "scan", "spaced"),
     "poles": ("LaurentSeries", "laurent_series", "plus_i_epsilon"),
 }
@@ -40,6 +43,9 @@ if TYPE_CHECKING:
     from .integrand import Integrand, monomial, parke_taylor, parse_integrand
     from .kinematics import Mandelstams
     from .momenta import random_momenta
+    from .plots.energy_line import EnergyLine, energy_line
+    from .plots.error_budget import ErrorBudget, error_budget
+    from .plots.pole_map import PoleMap, pole_map
     from .poles import LaurentSeries, laurent_series, plus_i_epsilon
     from .scans import Scan, ScanPoint, ScanPoints, ScanRow, StoreError, open_scan, scan, spaced
 
@@ -48,6 +54,8 @@ __all__ = [
     "Convergence",
     "DiskExponents",
     "DiskIntegral",
+    "EnergyLine",
+    "ErrorBudget",
     "Estimate",
     "FEntry",
     "InputError",
@@ -57,6 +65,7 @@ __all__ = [
     "Mandelstams",
     "NotAvailableError",
     "PoleError",
+    "PoleMap",
     "Scan",
     "ScanPoint",
     "ScanPoints",
@@ -71,12 +80,15 @@ __all__ = [
     "alpha_expansion",
     "converge",
     "disk_integral",
+    "energy_line",
+    "error_budget",
     "laurent_series",
     "monomial",
     "open_scan",
     "parke_taylor",
     "parse_integrand",
     "plus_i_epsilon",
+    "pole_map",
     "random_momenta",
     "recognise",
     "reconstruct",
