@@ -1,0 +1,1 @@
+"""Sphere integrals: over complex planes directly, and through bilinears of disk integrals."""
