@@ -17,17 +17,22 @@ from ..report.plain import plain
 FORMAT = choice("table", "json")
 
 
+Explain = Callable[[Job], Mapping[str, Any]]
+
+
 class Verb(click.Command):
-    """A command that knows the fields of its job."""
+    """A command that knows the fields of its job, and can tell what the job would do."""
 
     fields: tuple[Field, ...] = ()
+    explain: Explain | None = None
 
 
-def verb(*fields: Field) -> Callable[[Callable[[Job], Outcome]], Verb]:
+def verb(*fields: Field, explain: Explain | None = None) -> Callable[[Callable[[Job], Outcome]], Verb]:
     """Make the command of a verb from ``function(job) -> Outcome``.
 
     The function's name is the verb and its docstring the help text.  The command takes a job file, flags for
-    ``fields``, or both; poles and work limits that the function raises become outcomes with exit code 1.
+    ``fields``, or both; poles and work limits that the function raises become outcomes with exit code 1.  ``explain``
+    gives the facts that ``kn-integrate info JOB`` shows, beyond the kinematic point.
     """
 
     def make(function: Callable[[Job], Outcome]) -> Verb:
@@ -55,6 +60,7 @@ def verb(*fields: Field) -> Callable[[Callable[[Job], Outcome]], Verb]:
             ],
         )
         command.fields = tuple(fields)
+        command.explain = explain
         return command
 
     return make

@@ -7,10 +7,11 @@ import platform
 from pathlib import Path
 from typing import Any
 
-from ..errors import InputError, NotAvailableError
-from ..jobs import INTEGRAND, ORDERING, Field, Job, integrand_of, job_of_file, point_of, read_file
+from ..errors import InputError
+from ..jobs import EXPONENTS, INTEGRAND, Field, Job, job_of_file, read_file
 from ..report.outcome import Outcome, outcome_of_facts
 from ..report.plain import plain
+from ._explain import explain_point
 from ._verb import FORMAT, Verb, format_option, job_argument, show, single
 
 
@@ -49,16 +50,37 @@ def _usable_cores() -> int:
 
 
 def _explain(job: Job) -> Outcome:
-    """What a job asks for, and what the engine would do about it."""
-    from .. import api
+    """What a job asks for, and what the engines would do about it."""
+    from . import load_verb
 
-    predict = getattr(api, "predict", None)
-    if predict is None:
-        raise NotAvailableError("info JOB: this version cannot predict the work of a job")
-    point, integrand = point_of(job), integrand_of(job)
-    rtol: Any = job.table("accuracy").get("rtol")
-    facts: dict[str, Any] = {"verb": job.verb, "integral": job.get(INTEGRAND) or "absolute-value exponents"}
-    return outcome_of_facts({**facts, **predict(point, integrand, ordering=job.get(ORDERING), rtol=rtol)})
+    facts: dict[str, Any] = {"verb": job.verb}
+    if job.get(INTEGRAND) is not None:
+        facts["integral"] = job.get(INTEGRAND)
+    elif job.get(EXPONENTS) is not None:
+        facts["integral"] = "absolute-value exponents"
+    explain = load_verb(job.verb).explain
+    return outcome_of_facts({**facts, **(explain_point(job) if explain is None else explain(job))})
+
+
+def _store_facts(path: str) -> Outcome:
+    """What the store of a scan holds."""
+    from ..scans import open_scan
+
+    scan = open_scan(path)
+    integral, options = scan.task["integral"], scan.task["options"]
+    seconds = sum(row.seconds for row in scan)
+    facts: dict[str, Any] = {
+        "store": path,
+        "integral": integral,
+        "options": options,
+        "points": scan.total,
+        "finished": len(scan),
+        "status": scan.counts,
+        "seconds in integrals": f"{seconds:.3g}",
+    }
+    if scan.rows and not scan.complete:
+        facts["seconds to go on one core"] = f"{seconds / len(scan) * (scan.total - len(scan)):.3g}"
+    return outcome_of_facts(facts)
 
 
 def _fields_of(path: str, name: str) -> tuple[Field, ...]:
@@ -76,14 +98,25 @@ def _callback(job: tuple[str, ...], format: tuple[str, ...]) -> None:
     if path is None:
         show("info", {}, output, _about)
         return
+    if _is_store(path):
+        show("info", {}, output, lambda: _store_facts(path))
+        return
     data = read_file(path)
     asked = job_of_file(path, data, _fields_of(path, data["verb"]))
     show("info", {"job": plain(asked.tables())}, output, lambda: _explain(asked))
 
 
+def _is_store(path: str) -> bool:
+    try:
+        with open(path, "rb") as file:
+            return file.read(16) == b"SQLite format 3\0"
+    except OSError:
+        return False  # what is wrong with it is said where it is read
+
+
 command = Verb(
     "info",
     callback=_callback,
-    help="Versions and machine; or what a job file asks for and would cost.",
+    help="Versions and machine; or what a job file asks for and would cost; or what the store of a scan holds.",
     params=[job_argument(), format_option()],
 )

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import math
 from pathlib import Path
+from typing import Any
 
 import click
 
@@ -11,6 +13,7 @@ from ..errors import InputError
 from ..jobs import INTEGRAND, KINEMATICS, ORDERING, Field, Job, accuracy
 from ..progress import FACES
 from ..report.outcome import Outcome
+from ._explain import BASE_MEMORY, disk_costs
 from ._points import ON, POINTS, SECOND, points_of, spec_of
 from ._verb import verb
 
@@ -23,7 +26,55 @@ PROGRESS = Field("scan", "progress", inputs.choice(*FACES), "|".join(FACES), "Ho
 _ACCURACY = tuple(field for field in accuracy("auto", "quadrature", "kz", "direct", "klt") if field.key != "threads")
 
 
-@verb(*KINEMATICS, INTEGRAND, SECOND, ORDERING, ON, *POINTS, STORE, WORKERS, CSV, JSON, PROGRESS, *_ACCURACY)
+def _explain(job: Job) -> dict[str, Any]:
+    """Points, what is there already, and the cost from three of the points."""
+    points = points_of(job)
+    spec = spec_of(job, points[0].place.n)
+    facts: dict[str, Any] = {
+        "points": len(points),
+        "coordinates": list(points[0].coordinates),
+        "first": dict(points[0].coordinates),
+        "last": dict(points[len(points) - 1].coordinates),
+    }
+    left, path, workers = len(points), job.get(STORE), job.get(WORKERS) or 1
+    if path is not None and Path(path).exists():
+        from ..scans import open_scan
+
+        facts["finished in the store"] = len(open_scan(path))
+        left = max(0, left - len(open_scan(path)))
+    samples = sorted({0, len(points) // 2, len(points) - 1})
+    if (job.get(ON) or "disk") == "disk":
+        found = [disk_costs(points[k].place, spec, None, job.table("accuracy")) for k in samples]
+        seconds = [min(_seconds(f, "quadrature seconds"), _seconds(f, "series seconds")) for f in found]
+        known = [s for s in seconds if math.isfinite(s)]
+        facts["on poles, of the first, middle and last"] = sum("on poles" in f for f in found)
+        if known:
+            facts["seconds for a point"] = f"{sum(known) / len(known):.2g}"
+            facts["seconds in all"] = f"{sum(known) / len(known) * left / workers:.2g} on {workers} cores"
+    facts["memory"] = f"{BASE_MEMORY * (workers + (workers > 1)):.0f} MB at least"
+    facts["size of the store"] = f"{len(points) * 6e-4:.2g} MB"
+    return facts
+
+
+def _seconds(facts: dict[str, Any], name: str) -> float:
+    return float(facts.get(name, math.inf))
+
+
+@verb(
+    *KINEMATICS,
+    INTEGRAND,
+    SECOND,
+    ORDERING,
+    ON,
+    *POINTS,
+    STORE,
+    WORKERS,
+    CSV,
+    JSON,
+    PROGRESS,
+    *_ACCURACY,
+    explain=_explain,
+)
 def scan(job: Job) -> Outcome:
     """An integral on a line, on a grid, on a random sample, or at the points of a table.
 

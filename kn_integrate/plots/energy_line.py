@@ -115,12 +115,13 @@ class EnergyLine:
         return figure
 
     def _with_gaps(self) -> tuple[list[float], list[float]]:
-        """The points with a gap wherever a pole lies between two of them: no line is drawn through infinity."""
+        """The points with gaps: no line is drawn through infinity, nor from one end of the phase to the other."""
         xs, ys = list(self.x[:1]), list(self.y[:1])
         poles = [r.x for r in self.resonances if r.distance == 0]
         for k in range(1, len(self.x)):
             low, high = sorted(self.x[k - 1 : k + 1])
-            if any(low <= pole <= high for pole in poles):
+            turned = self.part == "phase" and abs(self.y[k] - self.y[k - 1]) > math.pi
+            if turned or any(low <= pole <= high for pole in poles):
                 xs.append(math.nan)
                 ys.append(math.nan)
             xs.append(self.x[k])

@@ -9,6 +9,7 @@ import pytest
 from click.testing import CliRunner
 
 from kn_integrate.cli import main
+from kn_integrate.commands import verb_names
 
 FOUR = ["--planar", "1.2=3/10,2.3=2/5"]
 FIVE = ["--planar", "1.2=3/10,2.3=2/5,3.4=1/2,4.5=7/20,5.1=9/20"]
@@ -95,7 +96,8 @@ def test_the_parser_complains(name):
 
 
 def test_complaints_of_the_parser_look_as_they_always_did(golden):
-    golden("bad_input.txt", "".join(f"{name}: {complaint(*args)}" for name, args in OF_THE_PARSER.items()))
+    complaints = "".join(f"{name}: {complaint(*args)}" for name, args in OF_THE_PARSER.items())
+    golden("bad_input.txt", complaints.replace(", ".join(verb_names()), "VERBS"))  # new verbs change nothing else
 
 
 @pytest.mark.parametrize("name", OF_THE_MATHEMATICS)

@@ -1,0 +1,56 @@
+"""What a job would cost, told before it runs."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+from ..jobs import CHORDS, EXPONENTS, INTEGRAND, ORDERING, PAIRS, PLANAR, Job, integrand_of, point_of
+
+BASE_MEMORY = 170.0  # MB of a process that has loaded the libraries and kernels (measured: 150 to 190)
+
+
+def explain_point(job: Job) -> dict[str, Any]:
+    """The facts for a verb with one kinematic point, as far as it has one and a disk integral there."""
+    if all(job.get(way) is None for way in (PLANAR, PAIRS, CHORDS, EXPONENTS)):
+        return {}
+    point = point_of(job)
+    if job.get(INTEGRAND) is None and job.get(EXPONENTS) is None:
+        return {"n": point.n}
+    return disk_costs(point, integrand_of(job), job.get(ORDERING), job.table("accuracy"))
+
+
+def disk_costs(point: Any, spec: Any, ordering: Any, accuracy: dict[str, Any]) -> dict[str, Any]:
+    """Engines, integrand evaluations, seconds on one core and memory for one disk integral."""
+    from .. import api
+
+    facts: dict[str, Any] = dict(api.predict(point, spec, ordering=ordering, rtol=accuracy.get("rtol")))
+    if "on poles" in facts or "terms" not in facts:
+        return facts
+    from ..dispatch.engines import MAX_KZ
+    from ..kz.integral import memory, predict
+
+    digits, method, n = accuracy.get("digits"), accuracy.get("method") or "auto", point.n
+    terms = _terms(point, spec, ordering)
+    seconds = predict(n, terms, rtol=accuracy.get("rtol") or 1e-10, digits=digits) if n <= MAX_KZ else math.inf
+    if math.isfinite(seconds):
+        facts["series seconds"] = f"{seconds:.2g}"
+        facts["series memory"] = f"{BASE_MEMORY + memory(n) / 1e6:.0f} MB"
+    if digits is not None:
+        for name in ("quadrature points", "quadrature seconds"):
+            facts.pop(name, None)  # predicted for double precision
+    facts["method"] = method if method != "auto" else _first_choice(facts, seconds, digits)
+    return facts
+
+
+def _first_choice(facts: dict[str, Any], seconds: float, digits: int | None) -> str:
+    """What "auto" begins with; the other engine follows where the first is not accurate enough."""
+    if digits is not None or float(facts.get("quadrature seconds", 0.0)) > seconds:
+        return "auto: kz first"
+    return "auto: quadrature first"
+
+
+def _terms(point: Any, spec: Any, ordering: Any) -> Any:
+    from ..dispatch.family import disk_family
+
+    return disk_family(point, spec, ordering).terms_at({})
