@@ -125,6 +125,22 @@ class Estimate:
 
         return sources_of(self.method, self.details)
 
+    def bibtex(self) -> str:
+        """The same as BibTeX entries."""
+        from .report.sources import bibtex_of
+
+        return bibtex_of(self.method, self.details)
+
+    def _repr_html_(self) -> str:
+        from .report.faces import html_of
+
+        return html_of(self)
+
+    def _repr_latex_(self) -> str:
+        from .report.faces import latex_of
+
+        return latex_of(self)
+
     def to_dict(self) -> dict[str, Any]:
         """A JSON-ready dictionary: numbers as text, complex as ``[re, im]``, never NaN.
 
@@ -133,5 +149,3 @@ class Estimate:
         from .report.plain import estimate_to_dict
 
         return estimate_to_dict(self)
-
-

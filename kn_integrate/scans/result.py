@@ -9,6 +9,7 @@ from collections import Counter
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cached_property
+from html import escape
 from pathlib import Path
 from typing import Any
 
@@ -206,6 +207,19 @@ class Scan:
             columns[name] = [getattr(row, name) for row in self.rows]
         return pandas.DataFrame(columns)
 
+    def _repr_html_(self) -> str:
+        from ..report.faces import html_table
+        from ..report.text import value_with_error
+
+        rows = []
+        for row in self.rows[:_SHOWN]:
+            value = "" if row.value is None else value_with_error(row.value, row.error, row.digits)
+            cells = [*(row.coordinates.get(name, "") for name in self.names), value.replace("+-", "±"), row.status]
+            rows.append([escape(cell) for cell in cells])
+        more = f"<p>and {len(self.rows) - _SHOWN} more</p>" if len(self.rows) > _SHOWN else ""
+        table = html_table([*(escape(name) for name in self.names), "value", "status"], rows)
+        return f"<p>{escape(str(self))}</p>{table}{more}"
+
     def __str__(self) -> str:
         counts = ", ".join(f"{count} {status}" for status, count in self.counts.items())
         return f"{self.path}: {len(self.rows)} of {self.total} points" + (f" ({counts})" if counts else "")
@@ -214,6 +228,7 @@ class Scan:
         return f"<Scan {self}>"
 
 
+_SHOWN = 20  # rows in a notebook
 _COLUMNS = ("real", "imaginary", "error", "status", "method", "evaluations", "seconds", "note", "job")
 
 

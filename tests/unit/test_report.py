@@ -2,6 +2,7 @@ from __future__ import annotations
 
 import enum
 import json
+import re
 from fractions import Fraction
 
 import mpmath
@@ -13,6 +14,7 @@ from hypothesis import strategies as st
 from kn_integrate.errors import PoleError, Status, WorkLimitError
 from kn_integrate.estimate import Estimate
 from kn_integrate.exact import Exact, read
+from kn_integrate.report.faces import latex_number, latex_table
 from kn_integrate.report.outcome import (
     json_text,
     outcome_of_estimate,
@@ -22,7 +24,7 @@ from kn_integrate.report.outcome import (
     table,
 )
 from kn_integrate.report.plain import plain, plain_number
-from kn_integrate.report.sources import SOURCES, sources_of
+from kn_integrate.report.sources import SOURCES, bibtex_of, sources_of
 from kn_integrate.report.text import error_text, number_text, value_with_error
 from kn_integrate.report.versions import versions
 
@@ -254,8 +256,9 @@ def test_facts_become_rows():
 
 def test_sources_are_given_once_and_in_order():
     joint = sources_of("quadrature+kz", {"techniques": ["gauss-jacobi", "common practice", "gauss-jacobi"]})
-    assert joint == tuple(dict.fromkeys([*SOURCES["quadrature"], *SOURCES["kz"], *SOURCES["gauss-jacobi"]]))
-    assert estimate().sources() == SOURCES["quadrature"]
+    used = dict.fromkeys([*SOURCES["quadrature"], *SOURCES["kz"], *SOURCES["gauss-jacobi"]])
+    assert joint == tuple(source.text for source in used)
+    assert estimate().sources() == tuple(source.text for source in SOURCES["quadrature"])
     assert sources_of("unheard of", {}) == ()
 
 
@@ -264,3 +267,57 @@ def test_versions_are_those_of_the_imported_libraries():
     assert found["numpy"] == np.__version__
     assert found["mpmath"] == mpmath.__version__
     assert set(found) == {"kn_integrate", "python", "numpy", "scipy", "numba", "mpmath", "python-flint"}
+
+
+def test_bibtex_has_one_entry_for_each_publication():
+    text = bibtex_of("quadrature+kz", {"techniques": ["u-equations"]})
+    keys = re.findall(r"@article\{(\w+),", text)
+    assert len(keys) == len(set(keys))
+    assert keys[0] == "KobaNielsen1969"
+    assert "used for: the integrals; the relations among dihedral coordinates" in text
+    assert "author = {Koba, Z. and Nielsen, H. B.}" in text
+    assert "eprint = {math/0606419}" in text
+    for entry in text.split("\n\n"):
+        assert entry.count("{") == entry.count("}")
+    assert estimate().bibtex() == bibtex_of("quadrature", {})
+
+
+def test_every_source_is_whole():
+    keys: dict[str, tuple[str, ...]] = {}
+    for source in (source for each in SOURCES.values() for source in each):
+        assert all((source.key, source.authors, source.title, source.journal, source.volume, source.year, source.pages))
+        assert source.year in source.key
+        assert keys.setdefault(source.key, (source.title, source.pages)) == (source.title, source.pages)
+
+
+@pytest.mark.parametrize(
+    ("text", "latex"),
+    [
+        ("25.914922073927 +- 4e-12", r"25.914922073927 \pm 4 \times 10^{-12}"),
+        ("1.25e+20 +- 1e+07", r"1.25 \times 10^{20} \pm 10^{7}"),
+        ("(1.250 - 0.500j) +- 1e-3", r"(1.250 - 0.500\mathrm{i}) \pm 10^{-3}"),
+        ("1.5 +- inf", r"1.5 \pm \infty"),
+        ("nan +- nan", r"\mathrm{nan} \pm \mathrm{nan}"),
+    ],
+)
+def test_latex_numbers(text, latex):
+    assert latex_number(text) == latex
+
+
+def test_faces_of_a_result(golden):
+    faces = []
+    for each in (
+        estimate(),
+        estimate(value=1.25 - 0.5j, error=1e-3, status=Status.INACCURATE),
+        estimate(value=float("nan"), error=float("inf"), status=Status.NOT_FINITE),
+    ):
+        faces += [each._repr_html_(), each._repr_latex_()]
+    golden("faces.txt", "\n".join(faces) + "\n")
+
+
+def test_latex_tables():
+    text = latex_table({"a": estimate(), "b": estimate(status=Status.ZERO)}, caption="Values.", label="tab:values")
+    assert text.startswith("\\begin{table}\n\\centering\n\\begin{tabular}{ll}")
+    assert text.count(r"\\") == 3
+    assert r"\textsf{(ZERO)}" in text
+    assert "\\caption{Values.}\n\\label{tab:values}\n\\end{table}" in text
