@@ -112,11 +112,29 @@ def _combine(
     total: Series = [zero] * (weight + 1)
     if not any(orders):
         return total
-    for word, series in engine(kin, weight).items():
+    functions = engine(kin, weight)
+    domains = {(1, *word, n - 1): series for word, series in functions.items()}
+    every = dict.fromkeys((1, *q) for words in orders for q in words)
+    factors: dict[Word, list[Exact]] = {domain: [ZERO] * len(orders) for domain in domains}
+
+    def add(domain: Word, q: Word, tree: Exact) -> None:
+        into = factors[domain]
         for k, words in enumerate(orders):
-            factor = ZERO
-            for q, c in words.items():
-                factor = factor + c * currents.numerator((1, *q), (1, *word, n - 1))
+            if q[1:] in words:
+                into[k] = into[k] + words[q[1:]] * tree
+
+    if len(every) <= len(domains):  # N is symmetric: expand the fewer words
+        for q in every:
+            for domain, tree in currents.numerators(q).items():
+                if domain in domains:
+                    add(domain, q, tree)
+    else:
+        for domain in domains:
+            for q, tree in currents.numerators(domain).items():
+                if q in every:
+                    add(domain, q, tree)
+    for domain, series in domains.items():
+        for k, factor in enumerate(factors[domain]):
             if factor:
                 for w in range(k, weight + 1):
                     total[w] = total[w] + series[w - k] * factor

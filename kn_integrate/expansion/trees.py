@@ -1,11 +1,13 @@
 """The field-theory part: from the functions F to Parke-Taylor integrands.
 
 ``Z(1, Q, n) = sum_w N(1 Q | 1 w (n-1)) F_w`` on the ordering 1..n, with N the doubly ordered sum over cubic trees
-(bi-adjoint scalar currents; Mafra 2016, arXiv:1603.09731) without its last propagator:
+without its last propagator (bi-adjoint scalar currents; Mafra 2016, arXiv:1603.09731).  For one ordering P the current
+is a combination of words, the other orderings:
 
-    ``s_P phi_(P|R) = sum over P = XY, R = VW of (phi_(X|V) phi_(Y|W) - phi_(Y|V) phi_(X|W))``,
+    ``b(i) = i``,  ``b(P) = (1/s_P) sum over P = XY of [b(X), b(Y)]``,
 
-phi_(i|j) = delta_ij, all parts non-empty, ``s_P`` the sum of ``s_ij`` inside P.
+with commutators of words under concatenation, all parts non-empty, ``s_P`` the sum of ``s_ij`` inside P; ``N(P|R)`` is
+``s_P`` times the coefficient of the word R in b(P), and symmetric in P and R.
 """
 
 from __future__ import annotations
@@ -17,14 +19,15 @@ from typing import TypeAlias
 from ..exact import ONE, ZERO, Exact
 
 Word: TypeAlias = tuple[int, ...]
+Combination: TypeAlias = dict[Word, Exact]
 
 
 class Currents:
-    """Doubly ordered currents at one kinematic point; raises ZeroDivisionError on a vanishing propagator."""
+    """Currents at one kinematic point; ZeroDivisionError where a propagator vanishes."""
 
     def __init__(self, s: Callable[[int, int], Exact]) -> None:
         self.s = s
-        self._known: dict[tuple[Word, Word], Exact] = {}
+        self._known: dict[Word, Combination] = {}
         self._propagators: dict[frozenset[int], Exact] = {}
 
     def propagator(self, labels: Iterable[int]) -> Exact:
@@ -36,26 +39,33 @@ class Currents:
             self._propagators[inside] = found
         return found
 
-    def numerator(self, p: Word, r: Word) -> Exact:
-        """phi_(P|R) without the propagator of the whole word."""
-        total = ZERO
-        for cut in range(1, len(p)):
-            x, y = p[:cut], p[cut:]
-            total = total + self.current(x, r[:cut]) * self.current(y, r[cut:])
-            total = total - self.current(y, r[: len(y)]) * self.current(x, r[len(y) :])
-        return total
-
-    def current(self, p: Word, r: Word) -> Exact:
-        """phi_(P|R)."""
-        if len(p) == 1:
-            return ONE if p == r else ZERO
-        key = (p, r)
-        found = self._known.get(key)
+    def current(self, p: Word) -> Combination:
+        """b(P)."""
+        found = self._known.get(p)
         if found is None:
-            found = ZERO
-            if frozenset(p) == frozenset(r):
-                found = self.numerator(p, r)
-                if found:
-                    found = found / self.propagator(p)
-            self._known[key] = found
+            if len(p) == 1:
+                found = {p: ONE}
+            else:
+                inverse = ONE / self.propagator(p)
+                found = {word: c * inverse for word, c in self._commutators(p, True).items()}
+            self._known[p] = found
         return found
+
+    def numerators(self, p: Word) -> Combination:
+        """N(P|R) for all words R that begin with the first label of P; words with N = 0 left out."""
+        return self._commutators(p, False)
+
+    def _commutators(self, p: Word, both: bool) -> Combination:
+        """The sum of commutators; only the words that begin with the first label of P unless ``both``."""
+        found: Combination = {}
+        for cut in range(1, len(p)):
+            right = self.current(p[cut:])
+            for x, a in self.current(p[:cut]).items():
+                if not both and x[0] != p[0]:
+                    continue
+                for y, b in right.items():
+                    c = a * b
+                    found[x + y] = found.get(x + y, ZERO) + c
+                    if both:
+                        found[y + x] = found.get(y + x, ZERO) - c
+        return {word: c for word, c in found.items() if c}
