@@ -7,6 +7,7 @@ from typing import Any
 
 from ..jobs import CHORDS, EXPONENTS, INTEGRAND, ORDERING, PAIRS, PLANAR, Job, integrand_of, point_of
 
+_ONE_DISK_INTEGRAL = ("disk", "residue", "converge")
 BASE_MEMORY = 170.0  # MB of a process that has loaded the libraries and kernels (measured: 150 to 190)
 
 
@@ -15,7 +16,7 @@ def explain_point(job: Job) -> dict[str, Any]:
     if all(job.get(way) is None for way in (PLANAR, PAIRS, CHORDS, EXPONENTS)):
         return {}
     point = point_of(job)
-    if job.get(INTEGRAND) is None and job.get(EXPONENTS) is None:
+    if job.verb not in _ONE_DISK_INTEGRAL or (job.get(INTEGRAND) is None and job.get(EXPONENTS) is None):
         return {"n": point.n}
     return disk_costs(point, integrand_of(job), job.get(ORDERING), job.table("accuracy"))
 
