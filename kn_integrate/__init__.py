@@ -21,12 +21,14 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "integrand": ("Integrand", "monomial", "parke_taylor", "parse_integrand"),
     "exponents": ("DiskExponents", "SphereExponents"),
     "integrals": ("DiskIntegral", "SphereIntegral"),
+    "kz.matrices": ("Matrix", "f_matrix", "z_matrix"),
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
     "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
     "plots.energy_line": ("EnergyLine", "energy_line"),
     "plots.error_budget": ("ErrorBudget", "error_budget"),
     "plots.pole_map": ("PoleMap", "pole_map"),
+    "report.faces": ("latex_table",),
     "scans": ("Scan", "ScanPoint", "ScanPoints", "ScanRow", "StoreError", "open_scan", "scan", "spaced"),
     "poles": ("LaurentSeries", "laurent_series", "plus_i_epsilon"),
 }
@@ -42,11 +44,13 @@ if TYPE_CHECKING:
     from .integrals import DiskIntegral, SphereIntegral
     from .integrand import Integrand, monomial, parke_taylor, parse_integrand
     from .kinematics import Mandelstams
+    from .kz.matrices import Matrix, f_matrix, z_matrix
     from .momenta import random_momenta
     from .plots.energy_line import EnergyLine, energy_line
     from .plots.error_budget import ErrorBudget, error_budget
     from .plots.pole_map import PoleMap, pole_map
     from .poles import LaurentSeries, laurent_series, plus_i_epsilon
+    from .report.faces import latex_table
     from .scans import Scan, ScanPoint, ScanPoints, ScanRow, StoreError, open_scan, scan, spaced
 
 __all__ = [
@@ -63,6 +67,7 @@ __all__ = [
     "KNError",
     "LaurentSeries",
     "Mandelstams",
+    "Matrix",
     "NotAvailableError",
     "PoleError",
     "PoleMap",
@@ -82,6 +87,8 @@ __all__ = [
     "disk_integral",
     "energy_line",
     "error_budget",
+    "f_matrix",
+    "latex_table",
     "laurent_series",
     "monomial",
     "open_scan",
@@ -95,6 +102,7 @@ __all__ = [
     "residue",
     "scan",
     "spaced",
+    "z_matrix",
     "zeta",
 ]
 

@@ -44,8 +44,13 @@ class ChordData:
         return found
 
 
-def chord_data(n: int, pairs: tuple[Exact, ...]) -> ChordData:
-    """Build :class:`ChordData` from pair exponents in the order (1,2), (1,3), ..., (n-1,n), rows -2."""
+def exact_chords(n: int, pairs: tuple[Exact, ...]) -> dict[Run, Exact]:
+    """The divisor exponent Y of every run but the full one."""
+    exponent = _run_exponents(n, pairs)
+    return _chords(n, exponent)
+
+
+def _run_exponents(n: int, pairs: tuple[Exact, ...]) -> dict[Run, Exact]:
     m = n - 2
     exponent: dict[Run, Exact] = {}
     for a in range(m):
@@ -53,8 +58,12 @@ def chord_data(n: int, pairs: tuple[Exact, ...]) -> ChordData:
         base = a * n - (a + 1) * (a + 2) // 2
         for b in range(a, m):
             exponent[a, b] = pairs[base + b + 1]
+    return exponent
+
+
+def _chords(n: int, exponent: dict[Run, Exact]) -> dict[Run, Exact]:
     total: dict[Run, Exact] = {}
-    runs = runs_of(m)
+    runs = runs_of(n - 2)
     for a, b in runs:
         # sum over the runs inside (a, b), by inclusion and exclusion
         value = exponent[a, b]
@@ -63,7 +72,13 @@ def chord_data(n: int, pairs: tuple[Exact, ...]) -> ChordData:
             if b - a > 1:
                 value = value - total[a + 1, b - 1]
         total[a, b] = value
-    chords = tuple(PoleDistance(total[a, b] + (b - a + 1)) for a, b in runs[:-1])
-    numbers = [exponent[run].value() for run in runs]
+    return {(a, b): total[a, b] + (b - a + 1) for a, b in runs[:-1]}
+
+
+def chord_data(n: int, pairs: tuple[Exact, ...]) -> ChordData:
+    """Build :class:`ChordData` from pair exponents in the order (1,2), (1,3), ..., (n-1,n), rows -2."""
+    exponent = _run_exponents(n, pairs)
+    chords = tuple(PoleDistance(y) for y in _chords(n, exponent).values())
+    numbers = [exponent[run].value() for run in runs_of(n - 2)]
     kind = complex if any(isinstance(x, complex) for x in numbers) else float
     return ChordData(n, np.array(numbers, dtype=kind), chords)

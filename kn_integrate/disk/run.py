@@ -95,7 +95,8 @@ class Layout:
         sector_points = counts[rows].prod(axis=1)
         growth = np.zeros(chords)
         np.add.at(growth, self.chord[rows], sector_points[:, None] / counts[rows])
-        return growth / sector_points.sum()
+        shares: NDArray[np.float64] = growth / sector_points.sum()
+        return shares
 
 
 def simple_layout(n: int, rules: Sequence[Rule]) -> Layout:

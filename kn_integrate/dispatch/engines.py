@@ -65,7 +65,7 @@ def _quadrature(n: int, terms: Sequence[Term], request: Request) -> Estimate:
             raise NotAvailableError(
                 f"quadrature in multiple precision goes up to n = {MAX_PRECISE_QUADRATURE}; use method='kz'"
             )
-        from ..precise.quadrature import integrate_terms as precise_terms
+        from ..disk.multiprecision import integrate_terms as precise_terms
 
         return precise_terms(
             n, terms, rtol=request.rtol, atol=request.atol, digits=request.digits, max_points=request.max_points

@@ -26,6 +26,7 @@ SAFETY = 16.0  # on what stochastic rounding shows, calibrated in tests/calibrat
 UNIT = 2.0**-53
 MAX_LEGS, MAX_PRECISE_LEGS = 11, 9
 MAX_WORKING_DIGITS = 4000
+MARGIN = 3.0
 CIRCLE, RADIUS = 32, 0.3  # points and relative radius of the mean over a circle, double precision
 PRECISE_CIRCLE = 8
 
@@ -256,7 +257,11 @@ def _escalated(
     digits: int | None,
     first: _Value | None,
 ) -> Estimate:
-    """Two working precisions, raised until they agree to the tolerance."""
+    """Two working precisions: the low one shows how many digits the kinematics cost, the high one gives the value.
+
+    Rounding and truncation are proportional to 10^-(working digits) with a factor that belongs to the kinematics; the
+    difference of the two values measures it, and ``MARGIN`` digits stay in reserve.
+    """
     import mpmath
 
     wanted = float(digits) if digits is not None else max(16.0, -math.log10(rtol) + 1.0)
@@ -264,25 +269,26 @@ def _escalated(
     if first is not None and math.isfinite(abs(first.value)) and first.value:
         lost = max(lost, 2.0 + math.log10(max(first.error / abs(first.value) / UNIT, 1.0)))
     ctx = mpmath.MPContext()
-    working = wanted + lost
-    low, count = _precise_sum(points, real, working)
-    steps: list[float] = [round(working)]
+    count = 0
+    steps: list[float] = []
     while True:
-        higher = working + max(15.0, 0.25 * working)
-        high, more = _precise_sum(points, real, higher)
-        count += more
-        steps.append(round(higher))
-        ctx.dps = int(higher) + 5
-        error = float(abs(ctx.mpmathify(low) - ctx.mpmathify(high)))
-        error += 10.0 ** (2.0 - min(working, 300.0)) * float(abs(high))
+        rough, working = 12.0 + lost, wanted + lost + MARGIN
+        low, some = _precise_sum(points, real, rough)
+        high, more = _precise_sum(points, real, working)
+        count += some + more
+        steps += [round(rough), round(working)]
+        ctx.dps = int(working) + 5
         size = float(abs(high))
-        if error <= max(atol, rtol * size, 0.0) or higher > MAX_WORKING_DIGITS:
+        difference = float(abs(ctx.mpmathify(low) - ctx.mpmathify(high)))
+        linear = difference <= 1e-3 * size
+        scale = 10.0 ** max(MARGIN - (working - rough), -300.0)
+        error = (difference + 10.0 ** -min(rough, 300.0) * size) * (scale if linear else 1.0)
+        if (linear and error <= max(atol, rtol * size)) or working > MAX_WORKING_DIGITS:
             break
-        short = math.log10(error / max(rtol * size, atol, 1e-300)) if size else 10.0
-        working, low = higher, high
-        working += max(10.0, short)
-        low, more = _precise_sum(points, real, working)
-        count += more
+        if error <= atol:  # a zero: the values themselves are below what was asked
+            break
+        short = math.log10(error / max(rtol * size, atol, 1e-300)) if linear else 10.0
+        lost += max(10.0, short)
     value: Any = high
     if digits is None:
         value = float(high) if real else complex(high)
