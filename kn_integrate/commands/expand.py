@@ -13,7 +13,14 @@ from ._verb import verb
 SECOND = Field("integrand", "g", text, "TEXT", "The second integrand: the sphere integral J(f|g).", flag="--second")
 ROW = Field("integrand", "row", labels, "2,3,..", "Row of the matrix F, in place of an integrand.")
 COLUMN = Field("integrand", "column", labels, "2,3,..", "Column of the matrix F [2,..,n-2].")
-WEIGHT = Field("expansion", "weight", count, "W", "Highest weight of the zeta values, up to 12 [8].")
+
+
+def _weight(value: Any, field: str) -> int:
+    """A weight; zero, the field-theory limit, is one."""
+    return 0 if value in (0, "0") and value is not False else count(value, field)
+
+
+WEIGHT = Field("expansion", "weight", _weight, "W", "Highest weight of the zeta values, up to 12 [8].")
 DIGITS = Field("expansion", "digits", count, "D", "Digits of the numbers [double precision].")
 METHOD = Field(
     "expansion",

@@ -26,6 +26,7 @@ from .zetas import MAX_WEIGHT, ZetaSum
 METHODS = ("auto", "associator", "recursion")
 MAX_DIGITS = 2000
 MAX_WORK = 1e8  # about a microsecond each
+MAX_ENTRIES = 1e6  # of a few hundred bytes each
 EXACT_DENOMINATOR = 10**12  # beyond this a rational point is a rounded one, and its exact coefficients are of no use
 _CONFIRM_DISK, _CONFIRM_SPHERE = 7, 6  # the largest n for which "auto" runs the second engine too
 _CONFIRM_DIGITS = 30
@@ -124,6 +125,8 @@ def _limit_work(spec: Spec, weight: int) -> None:
     entries = factorial(m) * ((3 ** (m + 1) - 1) // 4 + 1)
     runs = 2 * factorial(spec.n - 3) if isinstance(spec, SphereIntegral) else 1
     work = runs * entries * 2**weight
+    if entries > MAX_ENTRIES:
+        raise WorkLimitError(entries, MAX_ENTRIES, "matrix entries", "fewer legs")
     if work > MAX_WORK:
         raise WorkLimitError(work, MAX_WORK, "exact products", "lower weight=")
 

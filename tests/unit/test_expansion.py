@@ -370,8 +370,10 @@ def test_reconstruction_refuses_bad_input(bad, match):
 
 
 def test_work_without_end_is_refused_before_it_starts():
+    with pytest.raises(WorkLimitError, match="matrix entries"):
+        alpha_expansion(Mandelstams.random(11, 1), FEntry(11), weight=2)
     with pytest.raises(WorkLimitError, match="exact products"):
-        alpha_expansion(Mandelstams.random(11, 1), FEntry(11), weight=8)
+        alpha_expansion(Mandelstams.random(10, 1), FEntry(10), weight=12)
     f = parke_taylor(*range(1, 10))
     with pytest.raises(WorkLimitError, match="exact products"):
         alpha_expansion(Mandelstams.random(9, 1), f, f, weight=8)
@@ -493,6 +495,8 @@ def test_command_on_the_sphere_and_with_numbers():
     ("args", "code", "text"),
     [
         (["--integrand", "PT(1,2,3)"], 2, "puncture 4"),
+        (["--integrand", "PT(1,2,3,4,5)", "--weight", "-1"], 2, "weight"),
+        (["--integrand", "PT(1,2,3,4,5)", "--weight", "0"], 0, ""),
         (["--integrand", "PT(1,2,3,4,5)", "--weight", "20"], 2, "weight"),
         (["--integrand", "PT(1,2,3,4,5)", "--row", "2,3"], 2, "only one of them"),
         (["--row", "2,4"], 2, "permutation"),
