@@ -27,7 +27,7 @@ from typing import TypeAlias
 from ..errors import WorkLimitError
 from ..exact import ZERO, Exact
 from ..integrand import Integrand
-from .fractions import Pair, Word, shuffles, tree_words
+from .chains import Pair, Word, shuffles, tree_words
 
 Forest: TypeAlias = tuple[Word, ...]  # one word for each root, in the order of the roots
 Monomial: TypeAlias = tuple[tuple[Pair, int], ...]

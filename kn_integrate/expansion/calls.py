@@ -14,7 +14,7 @@ from ..integrand import Integrand
 from ..kinematics import Mandelstams
 from ..ratios import shown
 from .balls import Ball
-from .fractions import Word
+from .chains import Word
 from .lines import Series
 from .numeric import GUARD, ball_of, ball_with, bits_of, fixed_zeta
 from .recursion import ball_engine

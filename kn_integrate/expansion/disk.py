@@ -20,7 +20,7 @@ from ..integrand import Integrand
 from ..kinematics import Mandelstams
 from .associator import expand_integrals
 from .by_parts import reduce_by_parts
-from .fractions import Word, chains
+from .chains import Word, chains
 from .lines import Series, through_zeros
 from .trees import Currents
 from .zetas import Product, ZetaSum, product_weight

@@ -21,8 +21,8 @@ from ..exact import ONE, ZERO, Exact, read_integer
 from ..integrals import DiskIntegral, SphereIntegral
 from ..integrand import Integrand
 from ..kinematics import Mandelstams
+from .chains import chains
 from .disk import in_standard_order
-from .fractions import chains
 from .specs import FEntry, Spec, leading_order, read_spec, series_of
 from .zetas import Product, ZetaSum, latex_number, product_weight, read_weight
 

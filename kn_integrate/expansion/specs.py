@@ -11,8 +11,8 @@ from ..errors import InputError
 from ..integrals import DiskIntegral, SphereIntegral
 from ..integrand import Integrand
 from ..kinematics import Mandelstams
+from .chains import Word
 from .disk import ZERO_SUM, Engine, disk_series, exact_engine, f_series, uniform_words
-from .fractions import Word
 from .lines import Series
 from .sphere import sphere_series
 
