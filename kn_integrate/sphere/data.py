@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ..channels import pair_index
-from ..errors import PoleError
+from ..errors import InputError, PoleError
 from ..exact import ZERO, Exact
 from .tree import Tree
 
@@ -76,6 +76,18 @@ class SphereData:
     def is_spinless(self) -> bool:
         """The integrand depends on moduli only."""
         return self.a == self.b
+
+    def refuse_rows(self) -> None:
+        """Raise InputError unless every row of a and of b sums to -2 and the spins are integers."""
+        index = pair_index(self.n)
+        if len(self.a) != len(self.b) or len(self.a) != self.n * (self.n - 1) // 2:
+            raise InputError("terms", f"{len(self.a)} exponents", f"{self.n * (self.n - 1) // 2} for n = {self.n}")
+        for i in range(1, self.n + 1):
+            row = [index[i, j] for j in range(1, self.n + 1) if j != i]
+            for side in (self.a, self.b):
+                total = sum((side[k] for k in row), ZERO)
+                if total != -2:
+                    raise InputError(f"exponents, label {i}", f"a sum of {total}", "the row sum -2")
 
     def refuse_poles(self) -> None:
         """Raise PoleError naming the cluster, when both of its divisor exponents are 0, -1, -2, ..."""

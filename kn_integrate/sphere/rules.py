@@ -30,17 +30,13 @@ class Orders:
     taylor: int
 
 
-def orders_of(level: int) -> Orders:
-    """Level 1, 2, 3, ...: steps that each gain about the same factor.
+def orders_of(angular: int) -> Orders:
+    """The orders that go with this many angular nodes.
 
-    The figures are measured: at these proportions no direction of the rule limits the others.
+    The proportions are measured: no direction of the rule limits the others.
     """
-    angular = 2 + 2 * level
-    torus = 12 + 6 * level
-    return Orders(angular, 2 + (13 * level) // 8, torus, (11 * torus) // 20)
-
-
-MAX_LEVEL = (MAX_ORDER - 2) // 2 - 1
+    torus = 6 + 3 * angular
+    return Orders(angular, max(2, round(0.8 * angular)), torus, (11 * torus) // 20)
 
 
 @lru_cache(maxsize=1)

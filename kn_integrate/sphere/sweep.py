@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -38,8 +38,9 @@ class Sweep:
     Attributes
     ----------
     parts : dict
-        By part: (real, imaginary, sum of moduli, sum of squares, left out by Taylor series).  A part is a place of every
-        point, and the boundary piece of the first bulk coordinate; it is the same at all orders.
+        By part: (real, imaginary, sum of moduli, sum of squares, left out by Taylor series).  A part is a boundary piece
+        of the first bulk coordinate together with the places of the points before it; what comes after is summed, for
+        only the sum over all places is a smooth function of the coordinates before.
     points : int
         Evaluations.
     """
@@ -108,10 +109,10 @@ class Sweeper:
         points = 0
         for row in range(states.count):
             one = states.rows(row, row + 1)
+            flat = _has_bulk(one)
             for (p,), grown in self._inserted(one, done, orders):
-                # the piece of the first bulk coordinate stays the part
-                kept = States(grown.tree, grown.d, grown.radius, grown.weight, np.full(grown.count, one.part[0]))
-                sums, count = self._work(kept, (*key, p), done + 1, orders)
+                kept = replace(grown, part=np.full(grown.count, one.part[0])) if flat else grown
+                sums, count = self._work(kept, key if flat else (*key, p), done + 1, orders)
                 points += count
                 for name, value in sums.items():
                     found[name] = found[name] + value if name in found else value
@@ -135,7 +136,7 @@ class Sweeper:
         cut = cuts(states, 0)
         outer = self._outer(states)
         half = self.symmetric and states.is_real
-        parts = states.part
+        parts, flat = states.part, _has_bulk(states)
         found: dict[Key, Array] = {}
         points = 0
         for p, place in enumerate(states.tree.places()):
@@ -150,7 +151,9 @@ class Sweeper:
             columns[:, SQUARE] = size * size * sums[:, SQUARE]
             # one pass per part: the order of additions is that of the states
             for part in np.unique(parts):
-                found[(*key, p, int(part))] = columns[parts == part].sum(axis=0)
+                name = (*key, int(part)) if flat else (*key, p, 0)
+                here = columns[parts == part].sum(axis=0)
+                found[name] = found[name] + here if name in found else here
         return found, points
 
     def _place(self, states: States, place: Place, cut: Any, half: bool, orders: Orders) -> tuple[Array, int]:
@@ -164,15 +167,15 @@ class Sweeper:
             if not tree.edges:
                 others = [states.tree.slots[s].label for s in slots]
                 known = numbers.of_pairs([(label, other) for other in others])
-                # the kernel has y - w: the other way round than z_i - z_j when y has the larger label
-                flips = np.array([-1 if (other < label and numbers.spin[k] % 2) else 1 for other, k in zip(others, known, strict=True)])
-                sign = np.prod(flips) * (-1) ** int(sum(numbers.spin[k] for k in known))
+                # the kernel has y - w, which is z_j - z_i towards smaller labels
+                turned = sum(int(numbers.spin[k]) for other, k in zip(others, known, strict=True) if other < label)
                 total = numbers.total[known]
                 count = plane_sums(
                     states.d, slots, excluded, outer, half, orders.angular, orders.radial, nodes, weights,
                     total.real.copy(), total.imag.copy(), numbers.spin[known], sums,
                 )  # fmt: skip
-                sums[:, :2] *= sign
+                if turned % 2:
+                    sums[:, :2] *= -1.0
                 return sums, _checked(count)
             size = states.d.shape[1]
             d = np.zeros((states.count, size + 1, size + 1), dtype=complex)
@@ -198,6 +201,12 @@ class Sweeper:
             numbers.mirror, orders.torus, orders.taylor, sums,
         )  # fmt: skip
         return sums, _checked(count)
+
+
+def _has_bulk(states: States) -> bool:
+    """Whether a point sits in the bulk of a chart, so that the states are nodes of a rule."""
+    tree = states.tree
+    return any(len(tree.slots_of(chart)) > 2 for chart in range(tree.charts))
 
 
 def _checked(count: int) -> int:
