@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from fractions import Fraction
+from itertools import combinations
 from math import factorial, gcd, lcm
 from typing import Any
 
@@ -66,9 +67,9 @@ def alpha_expansion(
     method
         ``"associator"``: exact rational combinations of multiple zeta values, derived.  ``"recursion"``: numbers from
         power series, recognised by integer relations where the digits suffice (with ``digits`` given, no more than
-        these are used).  ``"auto"``: the associator, confirmed by numbers from the recursion up to seven points on the
-        disk and six on the sphere; numbers alone, unrecognised, for a point that is not exact (with a denominator above
-        10^12, as floating-point input has).
+        these are used).  ``"auto"``: the associator, confirmed by numbers from the recursion where these come in
+        seconds (up to seven points on the disk, five or six on the sphere); numbers alone, unrecognised, for a point
+        that is not exact (with a denominator above 10^12, as floating-point input has).
 
     Returns
     -------
@@ -146,7 +147,7 @@ def _not_exact(kin: Mandelstams) -> str:
 
 def _from_words(spec: Spec, kin: Mandelstams, weight: int, digits: int | None, confirm: bool) -> AlphaSeries:
     exact = series_of(spec, kin, weight)
-    small = kin.n <= (_CONFIRM_SPHERE if isinstance(spec, SphereIntegral) else _CONFIRM_DISK)
+    small = _is_quick(spec, kin)
     details: dict[str, Any] = {}
     basis = "derived"
     if confirm and small:
@@ -163,6 +164,15 @@ def _from_words(spec: Spec, kin: Mandelstams, weight: int, digits: int | None, c
     if confirm and small:
         method += "+recursion"
     return AlphaSeries(kin.n, leading_order(spec), _described(spec, kin), tuple(coefficients), method, details)
+
+
+def _is_quick(spec: Spec, kin: Mandelstams) -> bool:
+    """Whether numbers from the second engine come in seconds."""
+    if not isinstance(spec, SphereIntegral):
+        return kin.n <= _CONFIRM_DISK
+    # with a vanishing channel the sphere needs many points on a line: a minute at six points
+    channels = (c for size in range(2, kin.n - 1) for c in combinations(range(1, kin.n), size))
+    return kin.n < _CONFIRM_SPHERE or (kin.n == _CONFIRM_SPHERE and all(kin.channel(c) for c in channels))
 
 
 def _number(value: ZetaSum, digits: int | None) -> tuple[Any, float]:
