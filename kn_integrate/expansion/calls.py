@@ -227,12 +227,8 @@ def _near_one(kin: Mandelstams) -> tuple[Mandelstams, int]:
 
     Coefficients are homogeneous, so this loses nothing, and numbers with a fixed number of bits like it.
     """
-    scale = 0
-    for value in kin.pairs:
-        p, q, d = value.as_ratio()
-        if value:
-            size = max(abs(p), abs(q)).bit_length() - d.bit_length()
-            scale = size if not scale else max(scale, size)
+    ratios = [value.as_ratio() for value in kin.pairs if value]
+    scale = max((max(abs(p), abs(q)).bit_length() - d.bit_length() for p, q, d in ratios), default=0)
     return (kin.scaled(Exact(Fraction(2) ** -scale)) if scale else kin), scale
 
 

@@ -224,6 +224,15 @@ def test_large_and_small_invariants(size):
         alpha_expansion(kin.scaled(Exact(10) ** 90), FEntry(5), weight=8)
 
 
+def test_invariants_of_very_different_size():
+    kin = Mandelstams.from_planar(4, {(1, 2): "1e-60", (2, 3): 1})
+    c = alpha_expansion(kin, FEntry(4), weight=2, digits=80)[2]
+    with mpmath.workdps(80):
+        assert abs(c.value + mpmath.mpf("1e-60") * mpmath.zeta(2)) <= c.error
+    assert c.error < 1e-78
+    assert c.exact is None
+
+
 def test_many_digits():
     value = alpha_expansion(KIN5, FEntry(5), weight=3, digits=700, method="recursion")
     with mpmath.workdps(720):
