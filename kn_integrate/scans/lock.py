@@ -39,11 +39,16 @@ class WriterLock:
                 ) from None
             try:
                 _lock(handle)
-            except OSError:
+            except (BlockingIOError, PermissionError):
                 owner = os.read(handle, 200).decode("utf-8", "replace").strip() or "another process"
                 os.close(handle)
                 raise InputError(
                     f"store {self.store}", f"a store that {owner} is writing to", "one writer at a time"
+                ) from None
+            except OSError as error:
+                os.close(handle)
+                raise InputError(
+                    f"store {self.store}", f"a file system without locks ({error.strerror})", "one that has them"
                 ) from None
             if self._is_current(handle):
                 break

@@ -205,11 +205,16 @@ class Store:
                     self._connection.execute(f"PRAGMA user_version = {SCHEMA}")
             about = _read_about(self._connection, self.path)
             if about["hash"] != self.task.hash:
-                held = json.loads(about["task"])
-                found = "; ".join(_differences(held, self.task.to_dict()))
-                raise InputError(
-                    f"store {self.path}", f"results of another scan ({found})", "the same scan, or a new file"
-                )
+                if self.finished():
+                    found = "; ".join(_differences(json.loads(about["task"]), self.task.to_dict()))
+                    raise InputError(
+                        f"store {self.path}", f"results of another scan ({found})", "the same scan, or a new file"
+                    )
+                # A first try that failed before any result (a mistyped option, say) binds nobody.
+                with self._writing():
+                    self._connection.execute("DELETE FROM points")
+                    for name, value in (("task", self.task.text), ("hash", self.task.hash)):
+                        self._connection.execute("UPDATE about SET value = ? WHERE name = ?", (value, name))
             text = canonical(versions())
             with self._writing():
                 self._connection.execute("INSERT OR IGNORE INTO versions(text) VALUES (?)", (text,))

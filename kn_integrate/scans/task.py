@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import numbers
 import time
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
@@ -45,8 +46,7 @@ class Task:
 
     def to_dict(self) -> dict[str, Any]:
         """Plain data; numbers as text."""
-        options = {key: value if isinstance(value, (int, str)) else repr(value) for key, value in self.options.items()}
-        return {"integral": dict(self.integral), "options": options}
+        return {"integral": dict(self.integral), "options": {k: _option(k, v) for k, v in self.options.items()}}
 
     @property
     def text(self) -> str:
@@ -57,6 +57,15 @@ class Task:
     def hash(self) -> str:
         """SHA-256 of :attr:`text`."""
         return digest(self.to_dict())
+
+
+def _option(name: str, value: Any) -> int | str:
+    """An option as text, the same for the same number of whatever type; digits stay an integer."""
+    if isinstance(value, str):
+        return value
+    if name == "digits":
+        return int(value)
+    return repr(float(value)) if isinstance(value, numbers.Real) else str(value)
 
 
 def canonical(data: Any) -> str:
@@ -149,9 +158,9 @@ def integrate(integral: Mapping[str, Any], place: Place, options: Mapping[str, A
     spec = spec_of(canonical(integral))
     if isinstance(spec, DiskIntegral):
         return disk_integral(place, spec, **options)
-    from .. import api
+    import kn_integrate
 
-    sphere_integral = getattr(api, "sphere_integral", None)
+    sphere_integral = getattr(kn_integrate, "sphere_integral", None)
     if sphere_integral is None:
         raise NotAvailableError("sphere integrals are not in this version")
     found: Estimate = sphere_integral(place, spec, **options)

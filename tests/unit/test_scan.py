@@ -7,8 +7,10 @@ import io
 import json
 import sqlite3
 import sys
+from fractions import Fraction
 
 import mpmath
+import numpy as np
 import pytest
 from scan_evaluate import beta
 
@@ -194,6 +196,33 @@ def test_another_integral_or_accuracy_is_refused(tmp_path):
     assert len(kn.open_scan(store)) == 1
 
 
+def test_a_first_try_without_results_binds_nobody(tmp_path):
+    store = tmp_path / "a.sqlite"
+    with pytest.raises(kn.InputError, match="rtol"):
+        run(store, grid("1/10", "1/5"), rtol=-1.0, evaluate=integrate)
+    assert len(kn.open_scan(store)) == 0
+    scan = run(store, grid("1/10"), rtol=1e-8)
+    assert (len(scan), scan.total) == (1, 1)
+
+
+def test_the_same_number_is_the_same_option(tmp_path):
+    store = tmp_path / "a.sqlite"
+    run(store, grid("1/10"), rtol=2.0**-30, max_points=1000)
+    run(store, grid("1/10"), rtol=np.float64(2.0**-30), max_points=1e3)
+    run(store, grid("1/10"), rtol=Fraction(1, 2**30), max_points=np.int64(1000))
+
+
+def test_a_scan_inside_a_scan_on_one_store_is_refused(tmp_path):
+    store = tmp_path / "a.sqlite"
+
+    def evaluate(*arguments):
+        with pytest.raises(kn.InputError, match="one writer at a time"):
+            run(store, grid("1/10"))
+        return beta(*arguments)
+
+    assert run(store, grid("1/10", "1/5"), evaluate=evaluate).complete
+
+
 def test_files_that_are_no_store_are_refused_and_left_alone(tmp_path):
     text, database = tmp_path / "text", tmp_path / "database"
     text.write_text("not a database, and long enough to be told from an empty file\n" * 20)
@@ -326,6 +355,19 @@ def test_exports_agree(tmp_path):
     assert document["task"]["integral"]["ordering"] == [1, 2, 3, 4]
     with pytest.raises(kn.InputError, match="can be written"):
         scan.to_csv(tmp_path / "no" / "a.csv")
+
+
+def test_notebook_and_latex_faces(tmp_path):
+    scan = run(tmp_path / "<a>.sqlite", grid("1/10", "0", "1/3"))
+    html = scan._repr_html_()
+    assert "&lt;a&gt;.sqlite: 3 of 3 points (2 OK, 1 ON_POLE)" in html
+    assert html.count("<tr>") == 4
+    lines = kn.latex_table(scan).splitlines()
+    assert lines[2] == r"$X_{1.2}$ & value \\"
+    assert lines[5] == r"$0$ & \textsf{ON\_POLE} \\"
+    assert lines[6].startswith("$1/3$ & $")
+    many = run(tmp_path / "b.sqlite", grid(*(f"{k}/100" for k in range(1, 31))))
+    assert "and 10 more" in many._repr_html_()
 
 
 def test_pandas_frame(tmp_path, monkeypatch):
