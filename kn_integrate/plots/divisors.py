@@ -7,13 +7,14 @@ counts; poles of single terms may cancel in the sum, so what is marked is where 
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import combinations
 
 from ..channels import Channel, pair_index
 from ..dispatch.shifts import chord_exponents
 from ..exact import ZERO, Exact
-from ..exponents import DiskExponents
+from ..exponents import DiskExponents, SphereExponents
 from ..integrals import DiskIntegral, SphereIntegral
 from ..scans.points import Place
 
@@ -39,29 +40,34 @@ class Divisor:
 def divisors(spec: DiskIntegral | SphereIntegral | None, place: Place) -> tuple[Divisor, ...]:
     """All divisors at a point; None stands for exponents, which are an integral by themselves."""
     if isinstance(spec, SphereIntegral):
-        return _on_the_sphere(spec, place)
+        terms = [(term.pairs, term.left, term.right) for term in spec.terms(place)]  # type: ignore[arg-type]
+        return _on_the_sphere(spec.n, terms)
+    if isinstance(place, SphereExponents):
+        return _on_the_sphere(place.n, [(place.pairs, place.left, place.right)])
     order: Channel
     if spec is None:
         assert isinstance(place, DiskExponents)
-        order, terms = tuple(range(1, place.n + 1)), [place.pairs]
+        order, exponents = tuple(range(1, place.n + 1)), [place.pairs]
     else:
-        order, terms = spec.ordering, [term.pairs for term in spec.terms(place)]  # type: ignore[arg-type]
+        order, exponents = spec.ordering, [term.pairs for term in spec.terms(place)]  # type: ignore[arg-type]
     least: dict[tuple[int, int], Exact] = {}
-    for pairs in terms:
+    for pairs in exponents:
         for chord, y in chord_exponents(place.n, pairs).items():
             least[chord] = min(least.get(chord, y), y, key=_real)
     return tuple(Divisor(tuple(sorted(order[i - 1 : j])), y, y) for (i, j), y in least.items())
 
 
-def _on_the_sphere(spec: SphereIntegral, place: Place) -> tuple[Divisor, ...]:
-    n, index = spec.n, pair_index(spec.n)
+def _on_the_sphere(
+    n: int, terms: Sequence[tuple[Sequence[Exact], Sequence[int], Sequence[int]]]
+) -> tuple[Divisor, ...]:
+    index = pair_index(n)
     least: dict[Channel, Divisor] = {}
-    for term in spec.terms(place):  # type: ignore[arg-type]
+    for pairs, lefts, rights in terms:
         for size in range(2, n - 1):
             for channel in combinations(range(1, n), size):
                 inside = [index[pair] for pair in combinations(channel, 2)]
-                x = sum((term.pairs[k] for k in inside), ZERO) + (size - 1)
-                left, right = (sum(powers[k] for k in inside) for powers in (term.left, term.right))
+                x = sum((pairs[k] for k in inside), ZERO) + (size - 1)
+                left, right = (sum(powers[k] for k in inside) for powers in (lefts, rights))
                 found = Divisor(channel, x + max(left, right), x + Exact(left + right) / 2)
                 known = least.get(channel, found)
                 pole = min(known.pole, found.pole, key=_real)

@@ -19,10 +19,10 @@ from typing import Any, TypeAlias
 from ..channels import dotted, pair_order
 from ..errors import InputError
 from ..exact import Exact, read, read_integer
-from ..exponents import DiskExponents
+from ..exponents import DiskExponents, SphereExponents
 from ..kinematics import Mandelstams
 
-Place: TypeAlias = Mandelstams | DiskExponents
+Place: TypeAlias = Mandelstams | DiskExponents | SphereExponents
 KINDS = ("planar", "pairs", "chords")
 _LONGEST = 10_000_000  # points; beyond this somebody mistyped a count
 
@@ -35,7 +35,7 @@ class ScanPoint:
     ----------
     coordinates : Mapping[str, str]
         What tells this point from the others, as text: ``{"t": "1/10"}``, ``{"1.2": "3/10", "2.3": "2/5"}``...
-    place : Mandelstams | DiskExponents
+    place : Mandelstams | DiskExponents | SphereExponents
         The kinematic point, or the exponents.
     """
 
@@ -53,12 +53,20 @@ class ScanPoint:
 def place_of(data: Mapping[str, Any]) -> Place:
     """The inverse of :attr:`ScanPoint.kinematics`."""
     named = "pairs" if "pairs" in data else "exponents"
-    values = {tuple(int(part) for part in key.split(".")): value for key, value in data[named].items()}
+    values = {_pair(key): value for key, value in data[named].items()}
+    if "left" in data:
+        left, right = ({_pair(key): power for key, power in data[side].items()} for side in ("left", "right"))
+        return SphereExponents.from_pairs(data["n"], values, left=left, right=right)
     if named == "exponents":
-        return DiskExponents.from_pairs(data["n"], values)  # type: ignore[arg-type]
+        return DiskExponents.from_pairs(data["n"], values)
     pairs = tuple(read(values[pair], named)[0] for pair in pair_order(data["n"]))
     rows = tuple(read(row, "row_sums")[0] for row in data["row_sums"])
     return Mandelstams(data["n"], pairs, rows, data["string"])
+
+
+def _pair(key: str) -> tuple[int, int]:
+    first, second = key.split(".")
+    return int(first), int(second)
 
 
 @dataclass(frozen=True)
@@ -84,18 +92,18 @@ class ScanPoints:
         return self.points[k]
 
     @classmethod
-    def of(cls, places: Iterable[Any]) -> ScanPoints:
+    def of(cls, places: Any) -> ScanPoints:
         """Any sequence of kinematic points (or exponents); their coordinate is their position from 1."""
         if isinstance(places, ScanPoints):
             return places
-        if isinstance(places, (Mandelstams, DiskExponents)):
+        if isinstance(places, Place):
             places = [places]
         if isinstance(places, (str, bytes, Mapping)) or not isinstance(places, Iterable):
             raise InputError("points", type(places).__name__, "ScanPoints, or a sequence of kinematic points")
         found = []
         for k, place in enumerate(places, start=1):
-            if not isinstance(place, (Mandelstams, DiskExponents)):
-                raise InputError(f"points, entry {k}", type(place).__name__, "Mandelstams or DiskExponents")
+            if not isinstance(place, Place):
+                raise InputError(f"points, entry {k}", type(place).__name__, "kinematics or exponents")
             found.append(ScanPoint({"point": str(k)}, place))
         return cls(_some(found))
 

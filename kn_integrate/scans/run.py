@@ -11,7 +11,7 @@ import multiprocessing
 import os
 import signal
 import threading
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Collection, Iterable, Iterator, Sequence
 from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Executor, Future, ProcessPoolExecutor, wait
 from contextlib import contextmanager
 from pathlib import Path
@@ -171,20 +171,20 @@ def _run(
 
 
 def _collect(
-    done: Iterable[Future[Record]], running: dict[Future[Record], int], target: Store, counter: Progress
+    done: Collection[Future[Record]], running: dict[Future[Record], int], target: Store, counter: Progress
 ) -> None:
     """Write what has arrived, in the order of the points; then raise the first failure there is."""
+    # Taken out first: after an interrupt in the middle of this nothing may be written twice.
+    taken = sorted(((running.pop(future), future) for future in done), key=lambda item: item[0])
     arrived, failure = [], None
-    for future in sorted(done, key=running.__getitem__):
+    for position, future in taken:
         error = future.exception()
         if error is None:
-            arrived.append((running[future], future.result()))
+            arrived.append((position, future.result()))
         elif failure is None:
             failure = error
     if arrived:
         _enter(target, counter, arrived)
-    for future in done:
-        del running[future]
     if failure is not None:
         raise failure
 

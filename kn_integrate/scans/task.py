@@ -17,9 +17,10 @@ from typing import Any, TypeAlias
 
 from ..errors import InputError, NotAvailableError, PoleError, WorkLimitError
 from ..estimate import Estimate
-from ..exponents import DiskExponents
+from ..exponents import SphereExponents
 from ..integrals import DiskIntegral, SphereIntegral
 from ..integrand import Integrand, parse_integrand
+from ..kinematics import Mandelstams
 from .points import Place, ScanPoint, place_of
 
 Evaluate: TypeAlias = Callable[..., Estimate]
@@ -87,7 +88,7 @@ def make_task(points: tuple[ScanPoint, ...], spec: Any, options: Mapping[str, An
         Where.
     spec
         :class:`DiskIntegral`, :class:`SphereIntegral`, an Integrand or its text (on the disk, ordering 1..n), or None
-        for points that are :class:`DiskExponents`.
+        for points that are exponents.
     options
         Of :data:`OPTIONS`; None means not given.
 
@@ -101,7 +102,7 @@ def make_task(points: tuple[ScanPoint, ...], spec: Any, options: Mapping[str, An
     for k, point in enumerate(points, start=1):
         if type(point.place) is not type(first) or point.place.n != first.n:
             raise InputError(f"points, entry {k}", repr(point.place), f"{type(first).__name__} with n = {first.n}")
-    if isinstance(first, DiskExponents):
+    if not isinstance(first, Mandelstams):
         if spec is not None:
             raise InputError("spec", "an integrand together with exponents", "None: the exponents are the integral")
         return Task({"kind": "exponents", "n": first.n}, given)
@@ -151,20 +152,18 @@ class Record:
 
 def integrate(integral: Mapping[str, Any], place: Place, options: Mapping[str, Any]) -> Estimate:
     """Compute one point with this package's own integrals; the default of :func:`evaluate_point`."""
+    spec = None if integral["kind"] == "exponents" else spec_of(canonical(integral))
+    if isinstance(place, SphereExponents) or isinstance(spec, SphereIntegral):
+        import kn_integrate
+
+        sphere_integral = getattr(kn_integrate, "sphere_integral", None)
+        if sphere_integral is None:
+            raise NotAvailableError("sphere integrals are not in this version")
+        found: Estimate = sphere_integral(place, spec, **options)
+        return found
     from ..api import disk_integral
 
-    if integral["kind"] == "exponents":
-        return disk_integral(place, **options)
-    spec = spec_of(canonical(integral))
-    if isinstance(spec, DiskIntegral):
-        return disk_integral(place, spec, **options)
-    import kn_integrate
-
-    sphere_integral = getattr(kn_integrate, "sphere_integral", None)
-    if sphere_integral is None:
-        raise NotAvailableError("sphere integrals are not in this version")
-    found: Estimate = sphere_integral(place, spec, **options)
-    return found
+    return disk_integral(place, spec, **options)
 
 
 @lru_cache(maxsize=64)

@@ -124,7 +124,9 @@ def test_bad_tables_are_refused_by_file_and_row(tmp_path, name, content, message
 def test_places_come_back_from_their_plain_data():
     exponents = kn.DiskExponents.from_pairs(4, {(1, 2): "-1/2", (2, 3): "-1/3"})
     tachyons = kn.Mandelstams.from_planar(4, {(1, 2): "1/2+2j", (1, 4): 1}, row_sums=-2, string="open")
-    for place in (exponents, tachyons):
+    given = {(1, 2): "-1/3", (2, 3): "-1/4"}
+    sphere = kn.SphereExponents.from_pairs(4, given, left={(1, 2): -1, (3, 4): -1}, right={(1, 3): -1, (2, 4): -1})
+    for place in (exponents, tachyons, sphere):
         data = json.loads(json.dumps(kn.ScanPoint({}, place).kinematics))
         assert place_of(data) == place
 
