@@ -21,6 +21,8 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "integrand": ("Integrand", "monomial", "parke_taylor", "parse_integrand"),
     "exponents": ("DiskExponents", "SphereExponents"),
     "integrals": ("DiskIntegral", "SphereIntegral"),
+    "momentum_kernel": ("biadjoint", "inverse_klt", "klt_kernel"),
+    "sphere.evaluate": ("sphere_integral",),
     "kz.matrices": ("Matrix", "f_matrix", "z_matrix"),
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
@@ -46,12 +48,14 @@ if TYPE_CHECKING:
     from .kinematics import Mandelstams
     from .kz.matrices import Matrix, f_matrix, z_matrix
     from .momenta import random_momenta
+    from .momentum_kernel import biadjoint, inverse_klt, klt_kernel
     from .plots.energy_line import EnergyLine, energy_line
     from .plots.error_budget import ErrorBudget, error_budget
     from .plots.pole_map import PoleMap, pole_map
     from .poles import LaurentSeries, laurent_series, plus_i_epsilon
     from .report.faces import latex_table
     from .scans import Scan, ScanPoint, ScanPoints, ScanRow, StoreError, open_scan, scan, spaced
+    from .sphere.evaluate import sphere_integral
 
 __all__ = [
     "AlphaSeries",
@@ -83,11 +87,14 @@ __all__ = [
     "ZetaSum",
     "__version__",
     "alpha_expansion",
+    "biadjoint",
     "converge",
     "disk_integral",
     "energy_line",
     "error_budget",
     "f_matrix",
+    "inverse_klt",
+    "klt_kernel",
     "latex_table",
     "laurent_series",
     "monomial",
@@ -102,6 +109,7 @@ __all__ = [
     "residue",
     "scan",
     "spaced",
+    "sphere_integral",
     "z_matrix",
     "zeta",
 ]
