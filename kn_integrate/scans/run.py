@@ -9,11 +9,23 @@ from __future__ import annotations
 
 import multiprocessing
 import os
+import pickle
 import signal
 import threading
-from collections.abc import Collection, Iterable, Iterator, Sequence
-from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Executor, Future, ProcessPoolExecutor, wait
+import traceback
+from collections.abc import Collection, Iterable, Iterator, Mapping, Sequence
+from concurrent.futures import (
+    FIRST_COMPLETED,
+    BrokenExecutor,
+    CancelledError,
+    Executor,
+    Future,
+    ProcessPoolExecutor,
+    wait,
+)
 from contextlib import contextmanager
+from dataclasses import dataclass
+from itertools import islice
 from pathlib import Path
 from typing import Any
 
@@ -22,10 +34,11 @@ from ..exact import read_integer
 from ..progress import FACES, Progress
 from .points import ScanPoint, ScanPoints
 from .result import Scan, open_scan
-from .store import Store
+from .store import Store, StoreError
 from .task import Evaluate, Record, Task, evaluate_point, integrate, make_task
 
 _AHEAD = 3  # points handed out per worker: enough to keep all busy, few enough to stop soon
+_LOSSES = 3  # times that an executor may lose the same point
 _UNKNOWN_WORKERS = 32  # for an executor that does not tell
 _QUIET = ("OK", "ZERO")  # statuses that progress does not count separately
 
@@ -119,10 +132,10 @@ def scan(
                     _enter(target, counter, [(position, evaluate_point(task, point.kinematics, evaluate))])
             elif executor is None:
                 with _own_processes(min(count, len(todo))) as pool:
-                    _run(pool, _AHEAD * count, target, counter, task, todo, evaluate)
+                    _Run(pool, target, counter, task, evaluate).go(todo, _AHEAD * count)
             else:
                 known = getattr(executor, "_max_workers", None) or _UNKNOWN_WORKERS
-                _run(executor, _AHEAD * known, target, counter, task, todo, evaluate)
+                _Run(executor, target, counter, task, evaluate).go(todo, _AHEAD * known)
     return open_scan(path)
 
 
@@ -132,61 +145,99 @@ def _enter(target: Store, counter: Progress, results: Sequence[tuple[int, Record
         counter.step(None if record.status in _QUIET else record.status)
 
 
-def _run(
-    executor: Executor,
-    window: int,
-    target: Store,
-    counter: Progress,
-    task: Task,
-    todo: Sequence[tuple[int, ScanPoint]],
-    evaluate: Evaluate,
-) -> None:
-    """Keep ``window`` points in the executor until all are done; write what arrives, also on the way out."""
-    waiting = iter(todo)
-    running: dict[Future[Record], int] = {}
+@dataclass(frozen=True)
+class _Failure:
+    """What a point raised, brought home as a value: an exception of a future is then the executor's own."""
 
-    def hand_out() -> None:
-        for position, point in waiting:
-            running[executor.submit(evaluate_point, task, point.kinematics, evaluate)] = position
-            if len(running) >= window:
-                break
+    error: BaseException
 
+
+def _guarded(task: Task, kinematics: Mapping[str, Any], evaluate: Evaluate) -> Record | _Failure:
     try:
-        hand_out()
-        while running:
-            done, _ = wait(running, return_when=FIRST_COMPLETED)
-            _collect(done, running, target, counter)
-            hand_out()
-    except BaseException as error:
-        for future in running:
-            future.cancel()
-        finished = {f for f in running if f.done() and not f.cancelled() and f.exception() is None}
-        _collect(finished, running, target, counter)
-        if isinstance(error, BrokenExecutor):
-            raise KNError(
-                "a worker process ended before its point was done (out of memory, killed, or a script without "
-                'if __name__ == "__main__"); every point that was finished is safe, run the same scan again to go on'
-            ) from error
-        raise
+        return evaluate_point(task, kinematics, evaluate)
+    except Exception as error:  # of whatever kind: it is raised again at home
+        if not isinstance(error, KNError):
+            error.add_note("in a worker:\n" + "".join(traceback.format_exception(error)))
+        try:
+            pickle.loads(pickle.dumps(error))
+        except (pickle.PickleError, TypeError, AttributeError):  # an exception that cannot travel
+            return _Failure(RuntimeError(f"{type(error).__name__}: {error}"))
+        return _Failure(error)
 
 
-def _collect(
-    done: Collection[Future[Record]], running: dict[Future[Record], int], target: Store, counter: Progress
-) -> None:
-    """Write what has arrived, in the order of the points; then raise the first failure there is."""
-    # Taken out first: after an interrupt in the middle of this nothing may be written twice.
-    taken = sorted(((running.pop(future), future) for future in done), key=lambda item: item[0])
-    arrived, failure = [], None
-    for position, future in taken:
-        error = future.exception()
-        if error is None:
-            arrived.append((position, future.result()))
-        elif failure is None:
-            failure = error
-    if arrived:
-        _enter(target, counter, arrived)
-    if failure is not None:
-        raise failure
+class _Run:
+    """Points on an executor: so many in it at a time, and what arrives is written, also on the way out.
+
+    An executor over a network can lose a point without the point being at fault (its worker died with the result in
+    its memory, say); such a point is handed out again, a few times.
+    """
+
+    def __init__(self, executor: Executor, target: Store, counter: Progress, task: Task, evaluate: Evaluate) -> None:
+        self.executor, self.target, self.counter, self.task, self.evaluate = executor, target, counter, task, evaluate
+        self.running: dict[Future[Record | _Failure], tuple[int, ScanPoint]] = {}
+        self.lost: dict[int, int] = {}
+
+    def go(self, todo: Sequence[tuple[int, ScanPoint]], window: int) -> None:
+        """All points; raises what the first failing one raised."""
+        waiting = iter(todo)
+        try:
+            while True:
+                for item in islice(waiting, max(0, window - len(self.running))):
+                    self._hand_out(item)
+                if not self.running:
+                    return
+                done, _ = wait(self.running, return_when=FIRST_COMPLETED)
+                self._collect(done)
+        except BaseException as error:
+            for future in self.running:
+                future.cancel()
+            if isinstance(error, StoreError):
+                raise  # nothing more can be written
+            finished = [f for f in self.running if f.done() and not f.cancelled() and f.exception() is None]
+            results = [(self.running[f][0], f.result()) for f in finished]
+            self._write([(position, result) for position, result in results if isinstance(result, Record)])
+            if isinstance(error, BrokenExecutor):
+                raise KNError(
+                    "a worker process ended before its point was done (out of memory, killed, or a script without "
+                    'if __name__ == "__main__"); every point that was finished is safe, run the same scan again to '
+                    "go on"
+                ) from error
+            raise
+
+    def _hand_out(self, item: tuple[int, ScanPoint]) -> None:
+        self.running[self.executor.submit(_guarded, self.task, item[1].kinematics, self.evaluate)] = item
+
+    def _collect(self, done: Collection[Future[Record | _Failure]]) -> None:
+        # Taken out first: after an interrupt in the middle of this nothing may be written twice.
+        taken = sorted(((self.running.pop(future), future) for future in done), key=lambda pair: pair[0][0])
+        arrived, again = [], []
+        for item, future in taken:
+            error = CancelledError() if future.cancelled() else future.exception()
+            if error is None:
+                arrived.append((item[0], future.result()))
+            elif isinstance(error, BrokenExecutor):
+                self._write(arrived)
+                raise error
+            else:
+                again.append((item, error))
+        self._write(arrived)
+        for item, error in again:
+            self.lost[item[0]] = self.lost.get(item[0], 0) + 1
+            if self.lost[item[0]] > _LOSSES:
+                raise KNError(
+                    f"the executor lost a point {_LOSSES + 1} times ({type(error).__name__}: {error}); every point "
+                    "that was finished is safe, run the same scan again to go on"
+                ) from error
+            self._hand_out(item)
+
+    def _write(self, arrived: Sequence[tuple[int, Record | _Failure]]) -> None:
+        """Enter the results; then raise what the first failing point raised."""
+        records = [(position, result) for position, result in arrived if isinstance(result, Record)]
+        if records:
+            _enter(self.target, self.counter, records)
+        for _position, result in arrived:
+            if isinstance(result, _Failure):
+                raise result.error
 
 
 @contextmanager

@@ -46,3 +46,10 @@ def killed_once(integral: Mapping[str, Any], place: Any, options: Mapping[str, A
         os.close(handle)
         os.kill(os.getpid(), 9)
     return beta(integral, place, options)
+
+
+def slips(integral: Mapping[str, Any], place: Any, options: Mapping[str, Any]) -> Estimate:
+    """The same, with a slip at s = 1/2."""
+    if str(place.pair(1, 2)) == "1/2":
+        raise ZeroDivisionError("a slip at 1/2")
+    return beta(integral, place, options)

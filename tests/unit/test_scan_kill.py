@@ -191,24 +191,27 @@ def test_a_lock_file_left_by_a_killed_scan_is_no_obstacle(tmp_path):
 
 FULL = """
 import resource, signal, sys
+from concurrent.futures import ThreadPoolExecutor
 sys.path[:0] = {paths!r}
 import scan_evaluate, kn_integrate as kn
 
 resource.setrlimit(resource.RLIMIT_FSIZE, ({limit}, resource.RLIM_INFINITY))
 points = kn.ScanPoints.grid(4, {{(1, 2): kn.spaced("1/1000", "1/2", {points})}}, {{(2, 3): "2/5"}})
 try:
-    kn.scan(points, "PT(1,2,3,4)", store={store!r}, progress="none", evaluate=scan_evaluate.beta)
+    kn.scan(points, "PT(1,2,3,4)", store={store!r}, progress="none", evaluate=scan_evaluate.beta,
+            executor={executor})
 except kn.KNError as error:
     print(type(error).__name__, error)
     sys.exit(7)
 """
 
 
-def test_full_target_is_a_clear_error_and_nothing_is_lost(tmp_path):
+@pytest.mark.parametrize("executor", ["None", "ThreadPoolExecutor(2)"])
+def test_full_target_is_a_clear_error_and_nothing_is_lost(tmp_path, executor):
     store = tmp_path / "scan.sqlite"
     # All points go in first; then the system refuses to let the file grow, as a full disk or a quota does.
     limit = 250 * 1024  # the whole scan takes about 284 KiB
-    code = FULL.format(paths=PATHS, limit=limit, points=POINTS, store=str(store))
+    code = FULL.format(paths=PATHS, limit=limit, points=POINTS, store=str(store), executor=executor)
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)
     assert done.returncode == 7, done
     assert done.stdout.startswith("StoreError"), done

@@ -117,3 +117,49 @@ def test_a_worker_that_dies_is_a_clear_error_and_the_scan_goes_on(tmp_path, monk
     scan = kn.scan(points, "PT(1,2,3,4)", workers=2, **task)
     assert scan.complete
     assert scan.ok
+
+
+class Losing(ThreadPoolExecutor):
+    """An executor that loses every third answer, as a cluster does whose workers die."""
+
+    def __init__(self, every: int) -> None:
+        super().__init__(2)
+        self.every, self.calls = every, 0
+
+    def submit(self, *arguments, **options):
+        self.calls += 1
+        if self.calls % self.every:
+            return super().submit(*arguments, **options)
+        return super().submit(lost)
+
+
+def lost() -> None:
+    raise TypeError("the answer was not what the executor expected")
+
+
+def test_points_that_the_executor_loses_are_handed_out_again(tmp_path):
+    points = kn.ScanPoints.grid(4, {(1, 2): kn.spaced("1/20", "1", 20)}, {(2, 3): "2/5"})
+    task = {"spec": "PT(1,2,3,4)", "progress": False, "evaluate": scan_evaluate.beta}
+    serial = kn.scan(points, store=tmp_path / "serial.sqlite", **task)
+    with Losing(3) as executor:
+        assert bits(kn.scan(points, store=tmp_path / "a.sqlite", executor=executor, **task)) == bits(serial)
+    with (
+        Losing(1) as executor,
+        pytest.raises(kn.KNError, match=r"lost a point 4 times \(TypeError: .*run the same scan"),
+    ):
+        kn.scan(points, store=tmp_path / "b.sqlite", executor=executor, **task)
+
+
+@pytest.mark.parametrize("workers", [1, 2])
+def test_what_a_point_raises_is_raised_here_and_the_rest_is_kept(tmp_path, workers):
+    points = kn.ScanPoints.grid(4, {(1, 2): kn.spaced("1/20", "1", 20)}, {(2, 3): "2/5"})
+    with pytest.raises(ZeroDivisionError, match="a slip at 1/2"):
+        kn.scan(
+            points,
+            "PT(1,2,3,4)",
+            store=tmp_path / "a.sqlite",
+            workers=workers,
+            progress=False,
+            evaluate=scan_evaluate.slips,
+        )
+    assert 5 <= len(kn.open_scan(tmp_path / "a.sqlite")) < 20
