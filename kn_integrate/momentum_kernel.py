@@ -18,7 +18,9 @@ References from memory.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Sequence
+import cmath
+import math
+from collections.abc import Iterable, Sequence
 from functools import cache
 from itertools import combinations, pairwise, permutations
 from math import comb
@@ -28,6 +30,7 @@ from .channels import Channel, dotted, read_labels, read_ordering
 from .errors import InputError, PoleError
 from .exact import ONE, ZERO, Exact, read_integer
 from .kinematics import Mandelstams
+from .precise.context import handed_out, local_context
 
 Chord = tuple[int, int]  # corners a < b of the polygon; it separates the sides a..b-1 from the others
 Triangle = tuple[int, int, int]
@@ -155,7 +158,7 @@ def inverse_klt(kin: Mandelstams, p: Sequence[int], q: Sequence[int], digits: in
     sine = sine_of(digits)
     every = shared.triangulations()
     if not every:
-        return sine.zero
+        return sine.handed_out(sine.zero)
     triangles = every[0]
     flip = {t: shared.flipped(t) for t in triangles}
     cuts = [
@@ -168,7 +171,7 @@ def inverse_klt(kin: Mandelstams, p: Sequence[int], q: Sequence[int], digits: in
         result = result / _sin(sine, kin, shared, chord)
     for block in _blocks(tuple(range(shared.n)), cuts):
         result = result * _block(sine, kin, shared, block)
-    return result
+    return sine.handed_out(result)
 
 
 def _blocks(corners: tuple[int, ...], cuts: Sequence[Chord]) -> list[tuple[int, ...]]:
@@ -245,7 +248,7 @@ def klt_kernel(
     for word in (*left, *right):
         if set(word) != set(left[0]) or 1 in word:
             raise InputError("rows, columns", dotted(word), "words of the same labels, without 1")
-    return tuple(tuple(_entry(sine, kin, row, column) for column in right) for row in left)
+    return tuple(tuple(sine.handed_out(_entry(sine, kin, row, column)) for column in right) for row in left)
 
 
 def _entry(sine: Sine, kin: Mandelstams, row: Channel, column: Channel) -> Any:
@@ -265,16 +268,37 @@ def _entry(sine: Sine, kin: Mandelstams, row: Channel, column: Channel) -> Any:
 
 
 class Sine:
-    """``sin pi x`` and ``cos pi x`` of exact numbers, relatively accurate next to their zeros."""
+    """``sin pi x`` and ``cos pi x`` of exact numbers, relatively accurate next to their zeros, and their arithmetic.
 
-    def __init__(self, zero: Any, one: Any, sin: Callable[[Exact], Any]) -> None:
-        self.zero, self.one = zero, one
-        self._sin = sin
+    With digits all numbers belong to a local mpmath context; ``handed_out`` turns a result into an ordinary number.
+    """
+
+    def __init__(self, digits: int | None) -> None:
+        self.ctx: Any = None if digits is None else local_context(digits + 10)
+        self.zero: Any = 0.0 if self.ctx is None else self.ctx.mpf(0)
+        self.one: Any = 1.0 if self.ctx is None else self.ctx.mpf(1)
+
+    def number(self, x: Any) -> Any:
+        """An exact number, or a value of either kind, in this arithmetic."""
+        if isinstance(x, Exact):
+            if self.ctx is None:
+                return x.value()
+            real = self.ctx.mpf(x.re.numerator) / x.re.denominator
+            return real if x.is_real else self.ctx.mpc(real, self.ctx.mpf(x.im.numerator) / x.im.denominator)
+        return x if self.ctx is None else self.ctx.mpmathify(x)
+
+    def handed_out(self, x: Any) -> Any:
+        """A result for the caller."""
+        return x if self.ctx is None else handed_out(x)
 
     def sin(self, x: Exact) -> Any:
         """``sin pi x``."""
         whole = round(x.re)
-        value = self._sin(x - whole)
+        rest = self.number(x - whole)
+        if self.ctx is not None:
+            value = self.ctx.sinpi(rest)
+        else:
+            value = cmath.sin(math.pi * rest) if isinstance(rest, complex) else math.sin(math.pi * rest)
         return -value if whole % 2 else value
 
     def cos(self, x: Exact) -> Any:
@@ -283,32 +307,9 @@ class Sine:
         return self.sin(half)
 
 
-def sine_of(digits: int | None) -> Sine:
-    """Sines in double precision, or with this many digits (mpmath numbers)."""
-    if digits is None:
-        import cmath
-        import math
-
-        def plain(x: Exact) -> Any:
-            value = x.value()
-            return cmath.sin(math.pi * value) if isinstance(value, complex) else math.sin(math.pi * value)
-
-        return Sine(0.0, 1.0, plain)
-    import mpmath
-
-    count = read_integer(digits, "digits", "a positive integer or None")
-    ctx = mpmath.MPContext()
-    ctx.dps = count + 10
-
-    def precise(x: Exact) -> Any:
-        number = ctx.mpf(x.re.numerator) / x.re.denominator
-        if not x.is_real:
-            number = ctx.mpc(number, ctx.mpf(x.im.numerator) / x.im.denominator)
-        value = ctx.sinpi(number)
-        raw = mpmath.mp
-        return raw.make_mpf(value._mpf_) if hasattr(value, "_mpf_") else raw.make_mpc(value._mpc_)
-
-    return Sine(mpmath.mpf(0), mpmath.mpf(1), precise)
+def sine_of(digits: Any) -> Sine:
+    """Sines in double precision, or with this many digits."""
+    return Sine(None if digits is None else read_integer(digits, "digits", "a positive integer or None"))
 
 
 def _sin(sine: Sine, kin: Mandelstams, shared: _Shared, chord: Chord) -> Any:

@@ -22,6 +22,7 @@ import mpmath
 
 from ..estimate import Estimate
 from ..exact import Exact, read
+from ..precise.context import handed_out
 from .shifts import Chord
 
 
@@ -146,6 +147,6 @@ def laurent(
         alias = 10.0 * max(middle, epsilon * largest) * quality ** (half - abs(k))
         value = scaled(k)
         scale = radius**-k
-        found.append((value.real if symmetric else value) * scale)
+        found.append(handed_out((value.real if symmetric else value) * scale))
         bounds.append((error + alias) * float(scale))
     return Laurent(low, tuple(found), tuple(bounds), evaluations, circle, symmetric)

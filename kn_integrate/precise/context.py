@@ -42,6 +42,24 @@ def ball(x: Exact, is_complex: bool) -> Any:
     return acb(real, arb(fmpq(x.im.numerator, x.im.denominator)))
 
 
+def local_context(digits: int) -> Any:
+    """An mpmath context of its own with this many digits: nothing a caller sets can change what is computed in it."""
+    import mpmath
+
+    ctx = mpmath.MPContext()
+    ctx.dps = digits
+    return ctx
+
+
+def handed_out(value: Any) -> Any:
+    """A number of a local context as an ordinary mpmath number with all its bits."""
+    import mpmath
+
+    if hasattr(value, "_mpf_"):
+        return mpmath.mp.make_mpf(value._mpf_)
+    return mpmath.mp.make_mpc(value._mpc_)
+
+
 def as_mpmath(value: Any, bits: int) -> Any:
     """The midpoint of a flint ball as an mpmath number that holds all its bits."""
     import mpmath

@@ -78,8 +78,8 @@ def sphere_integral(
     rtol, atol, digits, max_points, threads
         As for :func:`kn_integrate.disk_integral`; digits through ``"klt"`` only.
     method
-        ``"klt"``: the bilinear of disk integrals (n <= 8); ``"direct"``: integration over complex planes (n <= 6), which
-        shares nothing with it; ``"auto"``: the bilinear, then the direct integral where that is not accurate enough.
+        ``"klt"``: the bilinear of disk integrals (n <= 8); ``"direct"``: integration over complex planes (n <= 6),
+        which shares nothing with it; ``"auto"``: the bilinear, then the direct integral where that is not accurate.
 
     Raises
     ------

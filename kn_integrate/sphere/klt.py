@@ -3,8 +3,8 @@ r"""Sphere integrals from disk integrals: the bilinear of Kawai, Lewellen and Ty
     ``J = (-1)^(n-3) pi^-(n-3) sum_{sigma, gamma} L_sigma K[sigma|gamma] R_gamma``,
 
 sigma, gamma over the permutations of 2..n-2; L_sigma the disk integral of the left exponents over
-``0 = z_1 < z_sigma1 < ... < z_{n-1} = 1``, R_gamma that of the right exponents over ``z_gamma1 < ... < z_1 = 0``, signs of
-integer powers included, and
+``0 = z_1 < z_sigma1 < ... < z_{n-1} = 1``, R_gamma that of the right exponents over ``z_gamma1 < ... < z_1 = 0``, signs
+of integer powers included, and
 
     ``K = prod_t sin pi (s_{1 sigma_t} + sum_{q<t} theta s_{sigma_q sigma_t})``,
 
@@ -119,27 +119,16 @@ def divisors(n: int, term: SphereTerm) -> list[tuple[tuple[int, ...], Exact, Exa
 
 
 def _total(n: int, terms: Sequence[SphereTerm], request: Request) -> tuple[Any, float, int]:
-    value: Any = 0
+    sine = sine_of(request.digits)
+    value: Any = sine.zero
     error, count = 0.0, 0
     for term in terms:
         number, spent = _one(n, term, request)
-        factor = term.coefficient.value() if request.digits is None else _precise(term.coefficient, request.digits)
-        value = value + factor * number.value
+        factor = sine.number(term.coefficient)
+        value = value + factor * sine.number(number.value)
         error += float(abs(factor)) * number.error
         count += spent
-    return value, error, count
-
-
-def _precise(x: Exact, digits: int) -> Any:
-    import mpmath
-
-    ctx = mpmath.MPContext()
-    ctx.dps = digits + 10
-    real = ctx.mpf(x.re.numerator) / x.re.denominator
-    if x.is_real:
-        return mpmath.mp.make_mpf(real._mpf_)
-    imag = ctx.mpf(x.im.numerator) / x.im.denominator
-    return mpmath.mp.make_mpc((real._mpf_, imag._mpf_))
+    return sine.handed_out(value), error, count
 
 
 def frames(n: int) -> list[tuple[int, ...]]:
@@ -165,6 +154,7 @@ def _one(n: int, term: SphereTerm, request: Request) -> tuple[_Number, int]:
 def _mean(n: int, term: SphereTerm, request: Request) -> tuple[_Number, int]:
     """The mean over a circle of massless shifts of s, for points where every frame meets poles of single terms."""
     direction = _direction(n)
+    sine = sine_of(request.digits)
     room = 1.0
     for _, a, b in divisors(n, term):
         for y in (a, b):
@@ -174,18 +164,18 @@ def _mean(n: int, term: SphereTerm, request: Request) -> tuple[_Number, int]:
                 if level >= 0 and distance > 0:
                     room = min(room, distance)
     radius = 0.3 * min(room, 1.0) / max(abs(v.value()) * n for v in direction)
-    total: Any = 0
+    total: Any = sine.zero
     error, count, largest = 0.0, 0, 0.0
     for k in range(CIRCLE):
         angle = 2.0 * math.pi * (k + 0.5) / CIRCLE
         h = Exact(Fraction(radius * math.cos(angle)), Fraction(radius * math.sin(angle)))
         moved = replace_pairs(term, tuple(p + h * v for p, v in zip(term.pairs, direction, strict=True)))
         number, spent = in_frame(n, moved, tuple(range(1, n + 1)), request)
-        total = total + number.value
+        total = total + sine.number(number.value)
         error += number.error
         count += spent
         largest = max(largest, float(abs(number.value)))
-    return _Number(total / CIRCLE, error / CIRCLE + 10.0 * largest * 0.3**CIRCLE), count
+    return _Number(sine.handed_out(total / CIRCLE), error / CIRCLE + 10.0 * largest * 0.3**CIRCLE), count
 
 
 def replace_pairs(term: SphereTerm, pairs: tuple[Exact, ...]) -> SphereTerm:
@@ -209,6 +199,7 @@ def in_frame(n: int, term: SphereTerm, frame: Sequence[int], request: Request) -
     s, left, right, sign = _relabelled(n, term, frame)
     inner = list(range(2, n - 1))
     words = list(permutations(inner))
+    sine = sine_of(request.digits)
     count = 0
 
     def disks(
@@ -220,14 +211,13 @@ def in_frame(n: int, term: SphereTerm, frame: Sequence[int], request: Request) -
             order = order_of(word)
             estimate = evaluate(n, [_disk_term(n, s, powers, order)], request)
             count += estimate.evaluations
-            found.append(_Number(estimate.value, estimate.error))
+            found.append(_Number(sine.number(estimate.value), estimate.error))
         return found
 
     _look_for_poles(n, s, left, [(1, *word, n - 1, n) for word in words])
     _look_for_poles(n, s, right, [(*word, 1, n - 1, n) for word in words])
     lefts = disks(left, lambda word: (1, *word, n - 1, n))
     rights = disks(right, lambda word: (*word, 1, n - 1, n))
-    sine = sine_of(request.digits)
     value: Any = sine.zero
     error, moduli = 0.0, 0.0
     for sigma, one in zip(words, lefts, strict=True):
@@ -242,18 +232,10 @@ def in_frame(n: int, term: SphereTerm, frame: Sequence[int], request: Request) -
         value = value + one.value * row
         error += float(abs(one.value)) * row_error + one.error * (row_moduli + row_error)
         moduli += float(abs(one.value)) * row_moduli
-    scale = (-1.0 / math.pi) ** (n - 3) if request.digits is None else _pi_power(n, request.digits)
+    scale = (-1 / (math.pi if sine.ctx is None else +sine.ctx.pi)) ** (n - 3)
     unit = EPSILON if request.digits is None else 10.0 ** -min(request.digits + 5, 300)
     error += unit * (4 + 3 * n + len(words)) * moduli
-    return _Number(sign * scale * value, error * abs(float(scale))), count
-
-
-def _pi_power(n: int, digits: int) -> Any:
-    import mpmath
-
-    ctx = mpmath.MPContext()
-    ctx.dps = digits + 10
-    return mpmath.mp.make_mpf(((-1 / ctx.pi) ** (n - 3))._mpf_)
+    return _Number(sine.handed_out(sign * scale * value), error * abs(float(scale))), count
 
 
 Powers = dict[tuple[int, int], int]
