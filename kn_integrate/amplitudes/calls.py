@@ -104,21 +104,21 @@ def open_amplitude(
     a = chiral_coupling("open", alpha)
     bosons = sum(not state.is_tachyon for state in found)
     factor, root = g ** (n - 2) / alpha * a ** (bosons // 2), (a if bosons % 2 else ONE)
-    orders, weight = _orderings(n, ordering, bosons)
+    orders, weight = orderings(n, ordering, bosons)
     f = _integrand(found, alpha, a, "left")
     if n == 3:
         total = sum((_three(f, order) for order in orders), ZERO)
-        return _judged(request, "exact", {}, lambda d: _scaled(_plain(total, d), weight * factor, root, d), (digits,))
+        return judged(request, "exact", {}, lambda d: scaled(plain(total, d), weight * factor, root, d), (digits,))
     kin = kinematics_of(found, alpha)
     details = {"monomials": len(f.terms), "orderings": len(orders) * weight, "techniques": ("by-parts",)}
     if request.method != "monomials":
         try:
             chiral = Chiral(kin, f)
-            return _judged(
+            return judged(
                 request,
                 "kz",
                 {**details, "choice": "monomials reduced by parts to F functions"},
-                lambda d: _scaled(_sum([chiral.value(order, d) for order in orders], d), weight * factor, root, d),
+                lambda d: scaled(summed([chiral.value(order, d) for order in orders], d), weight * factor, root, d),
             )
         except (ResonanceError, PoleError, NotAvailableError, ZeroDivisionError) as error:
             if request.method == "reduction":
@@ -171,7 +171,7 @@ def closed_amplitude(
     factor = g ** (n - 2) * 8 / alpha * a**tensors
     left, right = (_integrand(found, alpha, a, side) for side in ("left", "right"))
 
-    def scaled(value: Value, d: int | None) -> Value:
+    def with_pi(value: Value, d: int | None) -> Value:
         # 8 pi (2 pi)^(n-3)
         if d is None:
             from math import pi
@@ -181,18 +181,18 @@ def closed_amplitude(
             ctx = context(d)
             number = ctx.pi * (2 * ctx.pi) ** (n - 3)
         error = value.error * float(number) + 4 * (UNIT if d is None else 10.0**-d) * float(abs(value.value * number))
-        return _scaled(Value(value.value * number, error), factor, ONE, d)
+        return scaled(Value(value.value * number, error), factor, ONE, d)
 
     if n == 3:
         product = sum((term.coefficient for term in left.terms), ZERO) * sum(
             (term.coefficient for term in right.terms), ZERO
         )
-        return _judged(request, "exact", {}, lambda d: scaled(_plain(product, d), d), (digits,))
+        return judged(request, "exact", {}, lambda d: with_pi(plain(product, d), d), (digits,))
     kin = kinematics_of(found, alpha)
     details = {"monomials": f"{len(left.terms)} x {len(right.terms)}", "techniques": ("by-parts", "kleiss-kuijf")}
     try:
         halves = Chiral(kin, left), Chiral(kin, right)
-        return _judged(request, "klt+kz", details, lambda d: scaled(bilinear(*halves, d), d))
+        return judged(request, "klt+kz", details, lambda d: with_pi(bilinear(*halves, d), d))
     except (ResonanceError, PoleError, NotAvailableError, ZeroDivisionError):
         for channel, level, at in SphereIntegral(n, left, _conjugated(right)).poles(kin):
             raise PoleError(channel, level, at) from None
@@ -210,7 +210,7 @@ def _integrand(states: Sequence[State], alpha: Exact, a: Exact, side: str) -> In
     return contraction(states, a, side)
 
 
-def _orderings(n: int, ordering: Sequence[int] | None, bosons: int) -> tuple[tuple[Channel, ...], int]:
+def orderings(n: int, ordering: Sequence[int] | None, bosons: int) -> tuple[tuple[Channel, ...], int]:
     """Orderings to compute, and how often each counts: a reversed ordering gives ``(-1)^bosons`` times the same."""
     if ordering is not None:
         return (read_ordering(ordering, n),), 1
@@ -233,19 +233,19 @@ def _three(f: Integrand, ordering: Channel) -> Exact:
 # --- numbers --------------------------------------------------------------------------------------------------------
 
 
-def _plain(value: Exact, digits: int | None) -> Value:
+def plain(value: Exact, digits: int | None) -> Value:
     if digits is None:
         return Value(value.value(), 2 * UNIT * abs(value))
     return Value(to_context(context(digits), value), 4 * 10.0 ** (-digits - 10) * abs(value))
 
 
-def _sum(values: Sequence[Value], digits: int | None) -> Value:
+def summed(values: Sequence[Value], digits: int | None) -> Value:
     total = sum(value.value for value in values) if values else 0.0
     slack = len(values) * (UNIT if digits is None else 10.0 ** (-digits - 10))
     return Value(total, sum(value.error + slack * float(abs(value.value)) for value in values))
 
 
-def _scaled(value: Value, factor: Exact, root: Exact, digits: int | None) -> Value:
+def scaled(value: Value, factor: Exact, root: Exact, digits: int | None) -> Value:
     """``factor sqrt(root) value``."""
     if digits is None:
         number = factor.value() * float(root) ** 0.5
@@ -258,7 +258,7 @@ def _scaled(value: Value, factor: Exact, root: Exact, digits: int | None) -> Val
     return Value(result, float(abs(number)) * value.error + 4 * unit * float(abs(result)))
 
 
-def _judged(
+def judged(
     request: Request,
     method: str,
     details: dict[str, Any],
@@ -307,10 +307,10 @@ def _by_monomials(
         disk_integral(kin, f, ordering=order, rtol=request.rtol, atol=request.atol, digits=request.digits)
         for order in orders
     ]
-    total = _scaled(_sum([Value(part.value, part.error) for part in parts], request.digits), factor, root, request.digits)
+    total = scaled(summed([Value(part.value, part.error) for part in parts], request.digits), factor, root, request.digits)
     evaluations = prod([1]) * sum(part.evaluations for part in parts)
     method = "+".join(dict.fromkeys(part.method for part in parts)) or "exact"
-    result = _judged(request, method, details, lambda _: total, (None,))
+    result = judged(request, method, details, lambda _: total, (None,))
     return replace(result, evaluations=evaluations)
 
 

@@ -8,13 +8,16 @@ r"""Closed strings from two chiral halves: the bilinear of Kawai, Lewellen and T
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from itertools import permutations
-from typing import Any
+from typing import Any, TypeAlias
 
 from ..exact import Exact
 from ..kinematics import Mandelstams
 from .basis import UNIT, Chiral, Value, context, to_context
+
+
+Half: TypeAlias = Callable[[tuple[int, ...], int | None], Value]
 
 
 def kernel(kin: Mandelstams, r: Sequence[int], t: Sequence[int], ctx: Any) -> Any:
@@ -45,11 +48,15 @@ def bilinear(left: Chiral, right: Chiral, digits: int | None) -> Value:
     PoleError, NotAvailableError, ZeroDivisionError
         Where a single disk integral has no value.
     """
-    n = left.n
+    return joined(left.massless, left.value, right.value, digits)
+
+
+def joined(kin: Mandelstams, left: Half, right: Half, digits: int | None) -> Value:
+    """The bilinear of any two functions of orderings with the monodromies of disk integrals."""
+    n = kin.n
     words = list(permutations(range(2, n - 1)))
-    kin = left.massless
-    a = {r: left.value((1, *r, n, n - 1), digits) for r in words}
-    b = {t: right.value((1, *t, n - 1, n), digits) for t in words}
+    a = {r: left((1, *r, n, n - 1), digits) for r in words}
+    b = {t: right((1, *t, n - 1, n), digits) for t in words}
     ctx = context(15 if digits is None else digits)
     unit = UNIT if digits is None else 10.0 ** (-digits - 8)
     total: Any = 0.0 if digits is None else ctx.mpf(0)
