@@ -16,6 +16,8 @@ def explain_point(job: Job) -> dict[str, Any]:
     if all(job.get(way) is None for way in (PLANAR, PAIRS, CHORDS, EXPONENTS)):
         return {}
     point = point_of(job)
+    if job.verb == "sphere" and job.get(INTEGRAND) is not None:
+        return sphere_costs(point.n, job.table("accuracy"))
     if job.verb not in _ONE_DISK_INTEGRAL or (job.get(INTEGRAND) is None and job.get(EXPONENTS) is None):
         return {"n": point.n}
     return disk_costs(point, integrand_of(job), job.get(ORDERING), job.table("accuracy"))
@@ -41,6 +43,20 @@ def disk_costs(point: Any, spec: Any, ordering: Any, accuracy: dict[str, Any]) -
         for name in ("quadrature points", "quadrature seconds"):
             facts.pop(name, None)  # predicted for double precision
     facts["method"] = method if method != "auto" else _first_choice(facts, seconds, digits)
+    return facts
+
+
+def sphere_costs(n: int, accuracy: dict[str, Any]) -> dict[str, Any]:
+    """The same for one sphere integral with one term."""
+    from ..sphere.direct import predict
+
+    method = accuracy.get("method") or "auto"
+    facts: dict[str, Any] = {"n": n, "method": "auto: klt first" if method == "auto" else method}
+    if n <= 6 and accuracy.get("digits") is None:
+        found = predict(n, accuracy.get("rtol") or 1e-10)
+        facts |= {"direct points": f"{found.points:.3g}", "direct seconds": f"{found.seconds:.2g}"}
+    orderings = math.factorial(n - 3)
+    facts["klt"] = f"{orderings} x {orderings} disk integrals and the momentum kernel"
     return facts
 
 

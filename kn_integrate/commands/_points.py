@@ -70,8 +70,8 @@ EPSILON = Field(
     "scan", "epsilon", inputs.number, "E", "Move every point by -i E in the channels of physical particles."
 )
 ON = Field("scan", "on", inputs.choice("disk", "sphere"), "disk|sphere", "Which integral [disk].")
-SECOND = Field(
-    "integrand", "g", inputs.text, "TEXT", "The second integrand on the sphere [the first].", flag="--second"
+RIGHT = Field(
+    "integrand", "g", inputs.text, "TEXT", "The right-moving integrand on the sphere [the same].", flag="--right"
 )
 POINTS = (TO, COUNT, GRID, SEED, LOW, HIGH, TABLE, EPSILON)
 
@@ -139,12 +139,12 @@ def spec_of(job: Job, n: int) -> Any:
     integrand = integrand_of(job)
     assert integrand is not None  # exponents are no field of these verbs
     if (job.get(ON) or "disk") == "disk":
-        if job.get(SECOND) is not None:
-            raise InputError(job.name(SECOND), "it with an integral on the disk", f"it with {ON.option} sphere")
+        if job.get(RIGHT) is not None:
+            raise InputError(job.name(RIGHT), "it with an integral on the disk", f"it with {ON.option} sphere")
         return DiskIntegral(n, integrand, job.get(ORDERING))
     if job.get(ORDERING) is not None:
         raise InputError(job.name(ORDERING), "it with an integral on the sphere", f"it with {ON.option} disk")
-    return SphereIntegral(n, integrand, job.get(SECOND))
+    return SphereIntegral(n, integrand, job.get(RIGHT))
 
 
 def _named(values: Mapping[inputs.Labels, Exact]) -> dict[str, Exact]:

@@ -10,7 +10,7 @@ from .. import inputs
 from ..errors import InputError
 from ..jobs import INTEGRAND, KINEMATICS, ORDERING, Field, Job, accuracy, integrand_of, point_of
 from ..report.outcome import Outcome, json_text
-from ._points import GRID, ON, SECOND, spec_of
+from ._points import GRID, ON, RIGHT, spec_of
 from ._verb import verb
 
 KINDS = ("energy-line", "pole-map", "error-budget")
@@ -26,7 +26,7 @@ WINDOW = Field(
     "plot", "window", GRID.read, "1.2=A:B:2,..", "pole-map: two channels, each with its first and last value."
 )
 _ACCURACY = tuple(field for field in accuracy("auto", "quadrature", "kz") if field.key != "threads")
-_FOR_POINTS = (*KINEMATICS, INTEGRAND, SECOND, ORDERING, ON, *_ACCURACY)
+_FOR_POINTS = (*KINEMATICS, INTEGRAND, RIGHT, ORDERING, ON, *_ACCURACY)
 
 
 def _explain(job: Job) -> dict[str, Any]:
@@ -74,7 +74,7 @@ def _only_with(job: Job, kind: str) -> None:
     """Refuse what another kind of figure needs: it would be ignored."""
     wanted = {
         "energy-line": (STORE, AXIS, PART),
-        "pole-map": (WINDOW, *KINEMATICS, INTEGRAND, SECOND, ORDERING, ON),
+        "pole-map": (WINDOW, *KINEMATICS, INTEGRAND, RIGHT, ORDERING, ON),
         "error-budget": (*KINEMATICS, INTEGRAND, ORDERING, *_ACCURACY),
     }[kind]
     for field in (STORE, AXIS, PART, WINDOW, *_FOR_POINTS):

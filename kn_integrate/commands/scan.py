@@ -14,7 +14,7 @@ from ..jobs import INTEGRAND, KINEMATICS, ORDERING, Field, Job, accuracy
 from ..progress import FACES
 from ..report.outcome import Outcome
 from ._explain import BASE_MEMORY, disk_costs
-from ._points import ON, POINTS, SECOND, points_of, spec_of
+from ._points import ON, POINTS, RIGHT, points_of, spec_of
 from ._verb import verb
 
 STORE = Field("scan", "store", inputs.text, "FILE", "The SQLite file with the results; gone on with if it is there.")
@@ -66,7 +66,7 @@ def _seconds(facts: dict[str, Any], name: str) -> float:
 @verb(
     *KINEMATICS,
     INTEGRAND,
-    SECOND,
+    RIGHT,
     ORDERING,
     ON,
     *POINTS,

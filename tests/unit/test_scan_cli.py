@@ -106,7 +106,7 @@ KIN = ["--planar", "1.2=1/3,2.3=2/5"]
         (["--store", "S", "--seed", "-1", "--count", "2"], "--seed"),
         ([*KIN, "--store", "S", "--grid", "1.2=0:1:3", "--low", "1"], "--low"),
         ([*KIN, "--store", "S", "--table", "absent.csv"], "absent.csv"),
-        ([*KIN, "--store", "S", "--grid", "1.2=1/3:1:3", "--second", "PT(1,2,4,3)"], "--second"),
+        ([*KIN, "--store", "S", "--grid", "1.2=1/3:1:3", "--right", "PT(1,2,4,3)"], "--right"),
         ([*KIN, "--store", "S", "--grid", "1.2=1/3:1:3", "--on", "sphere", "--ordering", "1,2,3,4"], "--ordering"),
         ([*KIN, "--store", "S", "--grid", "1.2=1/3:1:3", "--workers", "0"], "--workers"),
         ([*KIN, "--store", "S", "--grid", "1.2=1/3:1:3", "--epsilon", "-1"], "epsilon"),
@@ -145,6 +145,7 @@ def test_info_tells_points_cost_and_what_is_there(job, tmp_path):
     ("verb", "tables"),
     [
         ("disk", ""),
+        ("sphere", "[accuracy]\nrtol = 1e-8\n"),
         ("residue", '[residue]\nchannel = "1.2"\n'),
         ("converge", "[converge]\nseconds = 2\n"),
         ("expand", "[expansion]\nweight = 4\n"),
@@ -158,6 +159,8 @@ def test_info_explains_a_job_of_every_verb(tmp_path, verb, tables):
     done = run("info", path)
     assert done.code == 0, done
     assert rows(done.out)["verb"] == verb
+    if verb == "sphere":
+        assert "direct seconds" in done.out
     if verb == "disk":
         assert "quadrature seconds" in done.out
         assert "series seconds" in done.out
@@ -208,3 +211,16 @@ def test_bad_plots_are_one_line_and_exit_code_2(args, flag):
     assert (done.code, done.out) == (2, "")
     assert done.err.startswith(f"{flag}: found "), done.err
     assert done.err.count("\n") == 1
+
+
+def test_sphere_integrals_are_scanned_too(tmp_path):
+    given = ["--on", "sphere", "--planar", "2.3=1/3", "--grid", "1.2=-1/3:1/2:3"]
+    store = tmp_path / "a.sqlite"
+    done = run("scan", *given, "--integrand", "PT(1,2,3,4)", "--right", "PT(1,2,4,3)", "--store", store)
+    assert done.code == 0, done
+    scan = kn.open_scan(store)
+    for row in scan:
+        assert row.value == kn.sphere_integral(row.place, "PT(1,2,3,4)", "PT(1,2,4,3)").value
+    assert {r.level for r in kn.energy_line(scan).resonances if r.channel == (1, 2)} == {0}
+    facts = rows(run("info", tmp_path / "a.sqlite").out)
+    assert facts["integral.kind"] == "sphere"
