@@ -80,7 +80,7 @@ def compare_with_residue(kin: kn.Mandelstams) -> float:
     # At energy 1 the channel 12 is on its pole of level 1.  Beside it the amplitude is residue / (X_12 + 1) and a
     # regular rest, of which the mean over both sides leaves a term of second order in the distance.
     residue = kn.residue(kin, GLUONS, channel=(1, 2), level=1)
-    print(f"   residue {residue}")
+    print(f"   residue {residue.value:.9f}")
     planar = kin.planar()
     ratios = []
     for step in (Fraction(1, 100), Fraction(1, 1000)):

@@ -77,7 +77,7 @@ class EnergyLine:
             "part": self.part,
             "x": list(self.x),
             "y": list(self.y),
-            "error": list(self.error),
+            "error": [error if math.isfinite(error) else None for error in self.error],
             "not_ok": list(self.not_ok),
             "resonances": [
                 {"x": r.x, "channel": dotted(r.channel), "level": r.level, "distance": r.distance}
@@ -212,7 +212,7 @@ def energy_line(
         part,
         tuple(x for x, _ in found),
         tuple(PARTS[part](row.value) for _, row in found),
-        tuple(row.error or 0.0 for _, row in found),
+        tuple(math.inf if row.error is None else row.error for _, row in found),
         tuple(x for x, row in found if not row.ok),
         tuple(sorted(resonances, key=lambda r: (r.x, r.channel))),
     )

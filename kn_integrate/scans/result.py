@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import io
 import json
+import math
 from collections import Counter
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
@@ -84,8 +85,10 @@ class ScanRow:
 
     @property
     def error(self) -> float | None:
-        """The bound on the error; None where there is no number."""
-        return None if self.error_text is None else float(self.error_text)
+        """The bound on the error, infinite where nothing is known; None where there is no number."""
+        if self.real is None:
+            return None
+        return math.inf if self.error_text is None else float(self.error_text)
 
     @property
     def place(self) -> Place:

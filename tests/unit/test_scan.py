@@ -289,6 +289,23 @@ def test_a_failure_that_nobody_foresaw_keeps_what_is_finished(tmp_path):
     assert run(store, grid("1/10", "1/5", "1/3", "1/2")).complete
 
 
+def test_numbers_without_a_bound_and_no_numbers(tmp_path):
+    answers = iter(
+        [
+            kn.Estimate(1.5, float("inf"), kn.Status.NOT_FINITE, "kz"),
+            kn.Estimate(float("nan"), float("nan"), kn.Status.NOT_FINITE, "kz"),
+            kn.Estimate(complex(1.0, float("nan")), 1.0, kn.Status.NOT_FINITE, "kz"),
+        ]
+    )
+    scan = run(tmp_path / "a.sqlite", grid("1/10", "1/5", "1/3"), evaluate=lambda *a: next(answers))
+    assert [(row.value, row.error) for row in scan] == [(1.5, float("inf")), (None, None), (None, None)]
+    assert "1.5 ± inf" in scan._repr_html_()
+    assert r"$1.5 \pm \infty$ \textsf{(NOT\_FINITE)}" in kn.latex_table(scan)
+    assert json.loads(scan.to_json())["rows"][0]["error"] is None
+    assert json.dumps(kn.energy_line(scan).to_dict(), allow_nan=False)
+    assert not scan.ok
+
+
 # --- real integrals -------------------------------------------------------------------------------------------------
 
 
