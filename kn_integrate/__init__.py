@@ -14,6 +14,21 @@ __version__ = "0.1.0"
 # The home of every public name.  A new name goes here, into the imports below (for type checkers, which do not run
 # `__getattr__`) and into `__all__`; tests/unit/test_public_names.py holds the three together.
 _HOMES: dict[str, tuple[str, ...]] = {
+    "amplitudes": (
+        "State",
+        "closed_amplitude",
+        "closed_superstring_amplitude",
+        "closed_tachyon",
+        "exchange_residue",
+        "gauge_boson",
+        "massless_tensor",
+        "open_amplitude",
+        "open_superstring_amplitude",
+        "partial_waves",
+        "tachyon",
+        "vertex_integrand",
+        "yang_mills_amplitude",
+    ),
     "errors": ("InputError", "KNError", "NotAvailableError", "PoleError", "Status", "WorkLimitError"),
     "estimate": ("Estimate",),
     "kinematics": ("Mandelstams",),
@@ -37,6 +52,21 @@ _HOMES: dict[str, tuple[str, ...]] = {
 _MODULE_OF = {name: module for module, names in _HOMES.items() for name in names}
 
 if TYPE_CHECKING:
+    from .amplitudes import (
+        State,
+        closed_amplitude,
+        closed_superstring_amplitude,
+        closed_tachyon,
+        exchange_residue,
+        gauge_boson,
+        massless_tensor,
+        open_amplitude,
+        open_superstring_amplitude,
+        partial_waves,
+        tachyon,
+        vertex_integrand,
+        yang_mills_amplitude,
+    )
     from .api import disk_integral, residue
     from .convergence import Convergence, converge
     from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
@@ -81,6 +111,7 @@ __all__ = [
     "ScanRow",
     "SphereExponents",
     "SphereIntegral",
+    "State",
     "Status",
     "StoreError",
     "WorkLimitError",
@@ -88,19 +119,28 @@ __all__ = [
     "__version__",
     "alpha_expansion",
     "biadjoint",
+    "closed_amplitude",
+    "closed_superstring_amplitude",
+    "closed_tachyon",
     "converge",
     "disk_integral",
     "energy_line",
     "error_budget",
+    "exchange_residue",
     "f_matrix",
+    "gauge_boson",
     "inverse_klt",
     "klt_kernel",
     "latex_table",
     "laurent_series",
+    "massless_tensor",
     "monomial",
+    "open_amplitude",
     "open_scan",
+    "open_superstring_amplitude",
     "parke_taylor",
     "parse_integrand",
+    "partial_waves",
     "plus_i_epsilon",
     "pole_map",
     "random_momenta",
@@ -110,6 +150,9 @@ __all__ = [
     "scan",
     "spaced",
     "sphere_integral",
+    "tachyon",
+    "vertex_integrand",
+    "yang_mills_amplitude",
     "z_matrix",
     "zeta",
 ]

@@ -15,7 +15,7 @@ from itertools import pairwise, permutations
 from typing import Any
 
 from ..channels import Channel, Pair, pair_order
-from ..errors import InputError
+from ..errors import InputError, PoleError
 from ..exact import ONE, ZERO, Exact
 from ..integrand import Integrand, monomial
 from ..kinematics import Mandelstams
@@ -87,8 +87,9 @@ class Chiral:
     def __init__(self, kin: Mandelstams, f: Integrand) -> None:
         self.n = kin.n
         self.sigma = integer_shift(kin.row_sums)
-        self.s = tuple(value + self.sigma.get(pair, 0) for pair, value in zip(pair_order(kin.n), kin.pairs, strict=True))
-        self.massless = Mandelstams(kin.n, self.s, (ZERO,) * kin.n)
+        pairs = zip(pair_order(kin.n), kin.pairs, strict=True)
+        values = tuple(value + self.sigma.get(pair, 0) for pair, value in pairs)
+        self.massless = Mandelstams(kin.n, values, (ZERO,) * kin.n)
         shifted = f * monomial({pair: -k for pair, k in self.sigma.items()}) if self.sigma else f
         self.form = parke_taylor_form(kin.n, shifted, self.massless.pair)
         self._vectors: dict[Channel, tuple[Exact, ...]] = {}
@@ -141,15 +142,23 @@ class Chiral:
 
         Raises
         ------
-        PoleError, NotAvailableError, ZeroDivisionError
-            At points where the functions F, or their coefficients, do not exist.
+        PoleError
+            When a Parke-Taylor integral of the ordering has a pole at the shifted point; the sum may have none.
+        NotAvailableError
+            At a resonance of the series engine.
         """
+        point = self.point(ordering)
+        # The reduction is an identity of meromorphic functions.  Where a Parke-Taylor integral of the ordering has a
+        # pole, a coefficient that vanishes says nothing: zero times infinity.
+        for (i, j), x in point.planar().items():
+            if x.is_integer and x <= 0:
+                raise PoleError(tuple(sorted(ordering[i - 1 : j])), -int(x), x)
         vector = self.vector(ordering)
         if not any(vector):
             return Value(0.0 if digits is None else _zero(), 0.0)
         key = (ordering, digits)
         if key not in self._functions:
-            self._functions[key] = f_values(self.point(ordering), digits)
+            self._functions[key] = f_values(point, digits)
         found = self._functions[key]
         return contracted(vector, found.values, found.errors, digits)
 

@@ -17,8 +17,8 @@ integrals, and ``Y = alpha' ((k1+k2)^2 - 1/alpha')``, so a prefactor ``C g^n`` m
 ``d^2z/pi``, ``Y = (alpha'/4)((k1+k2)^2 - 4/alpha')``; with ``C' (2 pi)^(n-3) g^n`` in front,
 ``(2 pi) C' 4/alpha' = C'^2 g^2``: ``C' = 8 pi/(alpha' g^2)`` (the same as Polchinski, String Theory I, (6.4.14) and
 (6.6.8), equation numbers from memory; his d^2z is twice ours).  The factor ``a^(1/2)`` of a massless vertex is fixed in
-the same way by a massless pole.  Chan-Paton factors are not included: ``ordering=None`` sums all (n-1)! cyclic orderings,
-the amplitude of the theory with one brane.
+the same way by a massless pole.  Chan-Paton factors are not included: ``ordering=None`` sums all (n-1)! cyclic
+orderings, the amplitude of the theory with one brane.
 """
 
 from __future__ import annotations
@@ -26,12 +26,11 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import replace
 from itertools import permutations
-from math import prod
 from typing import Any
 
 from ..channels import Channel, read_ordering
 from ..dispatch.request import Request, make_request
-from ..errors import KNError, NotAvailableError, PoleError, Status
+from ..errors import NotAvailableError, PoleError, Status
 from ..estimate import Estimate, judge
 from ..exact import ONE, ZERO, Exact, read
 from ..integrals import SphereIntegral
@@ -94,7 +93,10 @@ def open_amplitude(
     Examples
     --------
     >>> from kn_integrate.amplitudes import tachyon
-    >>> k = [(0, 1, 0), (0, "-1/2", "1/2j"), (0, "-1/2", "-1/2j")]  # any vectors on the shell will do
+    >>> k = [(0, "4/5", "3/5"), (0, "3/5", "4/5"), (0, "-4/5", "-3/5"), (0, "-3/5", "-4/5")]
+    >>> A = open_amplitude([tachyon(q) for q in k], ordering=(1, 2, 3, 4))  # Gamma(73/25) Gamma(-23/25)
+    >>> print(f"{A.value:.10f}", A.ok)
+    -24.2545362968 True
     """
     found = read_states(states, "open")
     request = make_request(rtol=rtol, atol=atol, digits=digits, method=method, methods=METHODS)
@@ -234,12 +236,14 @@ def _three(f: Integrand, ordering: Channel) -> Exact:
 
 
 def plain(value: Exact, digits: int | None) -> Value:
+    """An exact number in the arithmetic of a step."""
     if digits is None:
         return Value(value.value(), 2 * UNIT * abs(value))
     return Value(to_context(context(digits), value), 4 * 10.0 ** (-digits - 10) * abs(value))
 
 
 def summed(values: Sequence[Value], digits: int | None) -> Value:
+    """The sum with the sum of the bounds."""
     total = sum(value.value for value in values) if values else 0.0
     slack = len(values) * (UNIT if digits is None else 10.0 ** (-digits - 10))
     return Value(total, sum(value.error + slack * float(abs(value.value)) for value in values))
@@ -307,11 +311,10 @@ def _by_monomials(
         disk_integral(kin, f, ordering=order, rtol=request.rtol, atol=request.atol, digits=request.digits)
         for order in orders
     ]
-    total = scaled(summed([Value(part.value, part.error) for part in parts], request.digits), factor, root, request.digits)
-    evaluations = prod([1]) * sum(part.evaluations for part in parts)
+    total = scaled(
+        summed([Value(part.value, part.error) for part in parts], request.digits), factor, root, request.digits
+    )
+    evaluations = sum(part.evaluations for part in parts)
     method = "+".join(dict.fromkeys(part.method for part in parts)) or "exact"
     result = judged(request, method, details, lambda _: total, (None,))
     return replace(result, evaluations=evaluations)
-
-
-__all__ = ["METHODS", "KNError", "closed_amplitude", "open_amplitude"]

@@ -16,7 +16,6 @@ from ..exact import Exact
 from ..kinematics import Mandelstams
 from .basis import UNIT, Chiral, Value, context, to_context
 
-
 Half: TypeAlias = Callable[[tuple[int, ...], int | None], Value]
 
 

@@ -63,7 +63,7 @@ def parke_taylor_form(n: int, f: Integrand, s: Callable[[int, int], Exact]) -> d
     )
     state: dict[Powers, Row] = {}
     for term in f.terms:
-        # z_in^k for all i: an even number of signs in all, and the factor (z_n)^-2 that PT(1, w, n) has with the same sign
+        # the factors z_in leave z_n^-2 and an even number of signs, as they do in PT(1, w, n)
         powers = tuple((pair, k) for pair, k in term.powers if pair[1] < n)
         _add(state, powers, _row(term.coefficient, is_complex), 1)
     forests: tuple[Forest, ...] = (((),) * (n - 1),)
@@ -168,9 +168,7 @@ def partial_fractions(own: tuple[tuple[int, int], ...]) -> tuple[tuple[Simple, P
 class _Step:
     """Integration over z_v."""
 
-    def __init__(
-        self, n: int, v: int, forests: tuple[Forest, ...], s: dict[Pair, Exact], is_complex: bool
-    ) -> None:
+    def __init__(self, n: int, v: int, forests: tuple[Forest, ...], s: dict[Pair, Exact], is_complex: bool) -> None:
         self.v, self.s, self.is_complex = v, s, is_complex
         self.roots = (1, *range(v, n))
         self.others = tuple(root for root in self.roots if root != v)
@@ -246,9 +244,7 @@ class _Step:
                 sign, factor = _difference(q, 1, k + 1)
                 _add(pieces.setdefault((q, -1), {}), _times(mono, factor), row, -sign)
 
-    def image(
-        self, part: dict[Powers, Row], integer: int, at: tuple[int, ...], q: int
-    ) -> Iterable[tuple[Powers, Row]]:
+    def image(self, part: dict[Powers, Row], integer: int, at: tuple[int, ...], q: int) -> Iterable[tuple[Powers, Row]]:
         """``c (integer + sum_(p in at) Omega^p)^-1 Omega^q`` for every row c."""
         from flint import fmpq_mat
 

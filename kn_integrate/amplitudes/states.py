@@ -151,7 +151,9 @@ def read_states(states: Iterable[State], string: str) -> tuple[State, ...]:
     InputError
         Names the entry.
     """
-    found = tuple(states) if isinstance(states, Iterable) and not isinstance(states, (str, bytes)) else (states,)
+    if not isinstance(states, Iterable):
+        raise InputError("states", type(states).__name__, "a sequence of states such as tachyon(k)")
+    found = tuple(states)
     allowed = OPEN if string == "open" else CLOSED
     for place, state in enumerate(found, start=1):
         if not isinstance(state, State):

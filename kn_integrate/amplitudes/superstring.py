@@ -3,8 +3,9 @@ r"""Massless tree amplitudes of the superstring (bosonic external states).
     ``A(1, r, n-1, n) = 2 (g/sqrt(2 alpha'))^(n-2) sum_w F_{r,w} A_YM(1, w, n-1, n)``
 
 (Mafra, Schlotterer, Stieberger 2011, arXiv:1106.2645), other orderings by relabelling; F -> 1 + zeta(2) ... as
-alpha' -> 0, so that the Yang-Mills amplitude of coupling ``g/sqrt(2 alpha')`` is the limit.  It is also the limit of the
-bosonic string with the same g, which fixes the normalisation.  Closed strings by the bilinear of Kawai, Lewellen and Tye:
+alpha' -> 0, so that the Yang-Mills amplitude of coupling ``g/sqrt(2 alpha')`` is the limit.  It is also the limit of
+the bosonic string with the same g, which fixes the normalisation.  Closed strings by the bilinear of Kawai, Lewellen
+and Tye:
 
     ``A = 4 (pi g)^(n-2) (4/alpha')^(n-3) (-1)/pi^(n-3) sum B_L(1,r,n,n-1) S[r|t] B_R(1,t,n-1,n)``,   B = F A_YM,
 
@@ -19,9 +20,9 @@ from itertools import permutations
 from math import pi
 from typing import Any
 
-from ..channels import Channel, pair_order, read_ordering
+from ..channels import Channel, dotted, pair_order
 from ..dispatch.request import make_request
-from ..errors import InputError
+from ..errors import InputError, NotAvailableError, PoleError
 from ..estimate import Estimate
 from ..exact import ONE, ZERO, Exact, read
 from ..kz.point import Point
@@ -48,11 +49,20 @@ class _Half:
         if key not in self._known:
             n, pair = self.n, self.massless.pair
             point = Point(n, tuple(pair(ordering[i - 1], ordering[j - 1]) for i, j in pair_order(n)))
+            for (i, j), x in point.planar().items():
+                channel = tuple(sorted(ordering[i - 1 : j]))
+                if x.is_integer and x <= 0:
+                    raise PoleError(channel, -int(x), x)
             found = f_values(point, digits)
-            vector = [
-                self.currents.amplitude((ordering[0], *(ordering[k - 1] for k in word), ordering[-2], ordering[-1]))
-                for word in permutations(range(2, n - 1))
-            ]
+            try:
+                vector = [
+                    self.currents.amplitude((ordering[0], *(ordering[k - 1] for k in word), ordering[-2], ordering[-1]))
+                    for word in permutations(range(2, n - 1))
+                ]
+            except PoleError as error:  # a channel that is not planar in this ordering: F vanishes there
+                raise NotAvailableError(
+                    f"channel {dotted(error.channel)} vanishes: a pole of single terms that cancels; move the point"
+                ) from None
             self._known[key] = contracted(vector, found.values, found.errors, digits)
         return self._known[key]
 
