@@ -20,8 +20,9 @@ from ..exact import ONE, ZERO, Exact
 from ..integrand import Integrand, monomial
 from ..kinematics import Mandelstams
 from ..kz.currents import amputated
+from ..kz.integral import MAX_PRECISE_LEGS
 from ..kz.point import Point
-from ..kz.vector import combination, f_values
+from ..kz.vector import Vector, combination, f_values
 from .reduction import parke_taylor_form
 
 Word = tuple[int, ...]
@@ -158,9 +159,26 @@ class Chiral:
             return Value(0.0 if digits is None else _zero(), 0.0)
         key = (ordering, digits)
         if key not in self._functions:
-            self._functions[key] = f_values(point, digits)
+            self._functions[key] = functions(point, digits)
         found = self._functions[key]
         return contracted(vector, found.values, found.errors, digits)
+
+
+LARGE = 30.0  # invariants of this size cost the series all digits of a double
+
+
+def functions(point: Point, digits: int | None) -> Vector:
+    """The functions F at a point; in multiple precision where double precision cannot hold them.
+
+    Raises
+    ------
+    PoleError, NotAvailableError
+    """
+    if digits is not None or max(abs(value) for value in point.pairs) <= LARGE or point.n > MAX_PRECISE_LEGS:
+        return f_values(point, digits)
+    found = f_values(point, 25)
+    values = tuple(float(v) if point.is_real else complex(v) for v in found.values)
+    return Vector(values, tuple(e + 2 * UNIT * abs(v) for e, v in zip(found.errors, values, strict=True)))
 
 
 def _zero() -> Any:

@@ -26,8 +26,7 @@ from ..errors import InputError, NotAvailableError, PoleError
 from ..estimate import Estimate
 from ..exact import ONE, ZERO, Exact, read
 from ..kz.point import Point
-from ..kz.vector import f_values
-from .basis import UNIT, Value, context, contracted
+from .basis import UNIT, Value, context, contracted, functions
 from .calls import judged, orderings, plain, scaled, summed
 from .klt import joined
 from .states import State, check_shells, kinematics_of, read_alpha_prime, read_states
@@ -53,7 +52,7 @@ class _Half:
                 channel = tuple(sorted(ordering[i - 1 : j]))
                 if x.is_integer and x <= 0:
                     raise PoleError(channel, -int(x), x)
-            found = f_values(point, digits)
+            found = functions(point, digits)
             try:
                 vector = [
                     self.currents.amplitude((ordering[0], *(ordering[k - 1] for k in word), ordering[-2], ordering[-1]))
