@@ -9,6 +9,7 @@ from .dispatch.family import disk_family
 from .dispatch.integral import integrate_family
 from .dispatch.request import make_request
 from .dispatch.shifts import chord_exponents
+from .errors import InputError
 from .estimate import Estimate
 from .exponents import DiskExponents
 from .integrals import DiskIntegral
@@ -178,6 +179,8 @@ def residue(
     0.500000000
     """
     if g is not None:
+        if not isinstance(kin, Mandelstams):
+            raise InputError("kin", type(kin).__name__, "Mandelstams for a residue of J(f|g)")
         from .sphere.residues import residue as sphere_residue
 
         return sphere_residue(

@@ -55,13 +55,14 @@ def _pattern(n: int, known: frozenset[int]) -> _Pattern:
             pivots.append((-1, left, right, row))
             continue
         scale = 1 / left[column]
-        equation_now = tuple({k: v * scale for k, v in part.items()} for part in (left, right, row))
+        left, right, row = ({k: v * scale for k, v in part.items()} for part in (left, right, row))
+        equation_now = (left, right, row)
         for place, (pivot, *equation) in enumerate(pivots):
             factor = equation[0].get(column, Fraction(0))
-            parts = tuple(dict(part) for part in equation)
+            parts = [dict(part) for part in equation]
             _subtract(parts, equation_now, factor)
-            pivots[place] = (pivot, *parts)
-        pivots.append((column, *equation_now))
+            pivots[place] = (pivot, parts[0], parts[1], parts[2])
+        pivots.append((column, left, right, row))
     checks = tuple((dict(right), dict(row)) for pivot, _, right, row in pivots if pivot < 0)
     solved = []
     free: Pair | None = None

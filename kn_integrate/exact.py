@@ -223,7 +223,8 @@ class Exact:
                 if not self._q:
                     return operation(0.0, float(number))
         if exact is None and not _is_machine_number(other):
-            return NotImplemented
+            unknown: Any = NotImplemented
+            return unknown  # type: ignore[no-any-return]
         if exact is None or self._q or exact._q:
             raise TypeError("complex numbers have no order")
         return operation(self._p * exact._d, exact._p * self._d)
@@ -346,11 +347,12 @@ def _as_exact(value: Any) -> Any:
     if isinstance(value, Decimal) and _is_moderate(value):
         p, d = value.as_integer_ratio()
         return _make(p, 0, d)
+    number: Any = value
     name = flint_name(value)
     if name == "fmpz":
         return _make(int(value), 0, 1)
     if name == "fmpq":
-        return _make(int(value.p), 0, int(value.q))
+        return _make(int(number.p), 0, int(number.q))
     return None
 
 

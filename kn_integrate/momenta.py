@@ -38,7 +38,7 @@ def read_vectors(vectors: Any, field: str) -> tuple[tuple[tuple[Exact, ...], ...
 
 def dot(k: Sequence[Exact], q: Sequence[Exact]) -> Exact:
     """The product ``-k_0 q_0 + k_1 q_1 + ...``."""
-    total = -(k[0] * q[0])
+    total: Exact = -(k[0] * q[0])
     for a, b in zip(k[1:], q[1:], strict=True):
         total = total + a * b
     return total

@@ -53,7 +53,8 @@ class FivePoint(DiskForm):
     @property
     def excess(self) -> Exact:
         """b1 + b2 - a0 - a1 - a2: the series converges as it stands where its real part is positive."""
-        return self.b1 + self.b2 - self.a0 - self.a1 - self.a2
+        excess: Exact = self.b1 + self.b2 - self.a0 - self.a1 - self.a2
+        return excess
 
     def pairs(self) -> PairExponents:
         """See :class:`Cubical`; a0 is minus the exponent of z_24."""

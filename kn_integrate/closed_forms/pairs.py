@@ -90,7 +90,9 @@ class PairExponents:
 
     def divisor(self, first: int, last: int) -> Exact:
         """Y of the consecutive positions first..last: the integrand is t^(Y-1) dt where they collide."""
-        return sum((self.at(a, b) for a, b in combinations(range(first, last + 1), 2)), ZERO) + (last - first)
+        inside = sum((self.at(a, b) for a, b in combinations(range(first, last + 1), 2)), ZERO)
+        exponent: Exact = inside + (last - first)
+        return exponent
 
     def chords(self) -> Iterator[tuple[tuple[int, ...], Exact]]:
         """All n(n-3)/2 pairs (positions of the channel, Y), each channel by the side that misses position n."""

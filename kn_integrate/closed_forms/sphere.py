@@ -88,7 +88,7 @@ class SphereForm(ClosedForm):
 
 
 def _subset_divisor(pairs: PairExponents, subset: tuple[int, ...]) -> Exact:
-    total = (len(subset) - 1) * ONE
+    total: Exact = (len(subset) - 1) * ONE
     for i, j in combinations(subset, 2):
         total = total + pairs.at(i, j)
     return total

@@ -16,7 +16,7 @@ from .plan import MAX_NODES, Choice, amplification, initial_choices, layout_of, 
 from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
-SAFETY = 8.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
+SAFETY = 12.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
 MAX_PASSES = 12
 DEFAULT_MAX_POINTS = 2e10
 # A better conditioned plan may cost this many times the first one (or this many points).  Beyond that a small value of
@@ -158,6 +158,9 @@ def integrate(
     for attempt in range(1, MAX_PASSES + 1):
         layout = layout_of(data.n, choices)
         if spent + layout.points > max_points:
+            if best is None:
+                hint = "raise max_points=, relax rtol=, or use method='kz'"
+                raise WorkLimitError(spent + layout.points, max_points, "points", hint)
             break
         outcome = run(data, layout, threads)
         spent += outcome.points

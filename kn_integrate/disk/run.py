@@ -158,8 +158,8 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64]) -> tuple[float, float]:
 
     The ratio of coefficients is the theoretical one of the nearest singularity or the measured one, whichever is
     slower; ratios are taken two apart because singularities on both sides of the interval make coefficients
-    alternate.  The error is the largest of the last two coefficients carried on at that ratio to the first degree the
-    rule gets wrong.
+    alternate.  The error is the envelope of the last four coefficients at that ratio, carried on to the first degree
+    the rule gets wrong: coefficients of oscillating integrands are now and then small by accident.
     """
     total, slowest = 0.0, 0.0
     for group in rule.groups:
@@ -170,7 +170,7 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64]) -> tuple[float, float]:
         if n4 > 0:
             ratio = max(ratio, math.sqrt(n2 / n4))
         ratio = min(ratio, 1.0)
-        total += max(n1, n2 * ratio) * ratio**group.steps
+        total += max(n1, n2 * ratio, n3 * ratio**2, n4 * ratio**3) * ratio**group.steps
         slowest = max(slowest, ratio)
     return total, slowest
 

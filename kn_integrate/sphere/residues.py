@@ -1,7 +1,7 @@
 """Residues of sphere integrals at the poles of a collision divisor.
 
 Near the divisor of a cluster S the integrand is ``q^(A-1) conj(q)^(B-1)`` times regular functions, ``A = X_S +
-(integer)`` and B likewise, and the integral has simple poles in X_S where both are non-positive integers.  The residue is
+(integer)`` and B likewise, with simple poles in X_S where both are non-positive integers.  The residue is
 taken by Cauchy's formula on a circle in kinematic space around the pole, each point through the bilinear of disk
 integrals: exact up to an aliasing error that is part of the bound.
 """

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import Any
 
 import numpy as np
@@ -131,6 +132,38 @@ class Rule:
             nulls=self.nulls[:, keep] * factor,
             conjugate_pairs=False,
         )
+
+
+def circle_points(count: int) -> NDArray[np.complex128]:
+    """``exp(i theta_j)``, ``theta_j = pi (2j+1)/count``."""
+    return _roots(2 * count)[2 * np.arange(count) + 1]
+
+
+def circle_fourier(count: int) -> NDArray[np.complex128]:
+    """``exp(-i k theta_j)/count`` for k (rows) and j below count.
+
+    Phases are looked up by whole numbers: formed as a product of doubles, ``k theta_j`` has a rounding error that grows
+    with k and is the same for all nodes, the worst kind.
+    """
+    k, j = np.arange(count), np.arange(count)
+    index = np.outer(k, 2 * j + 1) % (2 * count)
+    table: NDArray[np.complex128] = _roots(2 * count)[index].conj() / count
+    return table
+
+
+@lru_cache(maxsize=256)
+def _roots(order: int) -> NDArray[np.complex128]:
+    """``exp(2 pi i m/order)`` for m below order, each correctly rounded up to one unit; order a multiple of 2."""
+    m = np.arange(order)
+    # fold into the first octant, where sine and cosine of a small angle are accurate
+    quarter, rest = np.divmod(4 * m, order)
+    angle = rest * (0.5 * math.pi / order)
+    table = np.empty(order, dtype=complex)
+    cos, sin = np.cos(angle), np.sin(angle)
+    table.real = np.choose(quarter, [cos, -sin, -cos, sin])
+    table.imag = np.choose(quarter, [sin, cos, -sin, -cos])
+    table.setflags(write=False)
+    return table
 
 
 def ellipse_parameter(distance: float) -> float:

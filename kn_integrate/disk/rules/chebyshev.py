@@ -24,14 +24,22 @@ Source: Chebyshev interpolation and product integration with modified moments, c
 
 from __future__ import annotations
 
-import math
 from functools import lru_cache
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from .base import NullGroup, PoleDistance, Rule, bent, ellipse_parameter, symmetric_bend
+from .base import (
+    NullGroup,
+    PoleDistance,
+    Rule,
+    bent,
+    circle_fourier,
+    circle_points,
+    ellipse_parameter,
+    symmetric_bend,
+)
 
 
 def chebyshev_moments(y: PoleDistance, a: float, count: int) -> NDArray[Any]:
@@ -78,15 +86,16 @@ def overhang_bend(size: int, reach: float) -> tuple[float, float, float]:
 def _overhang(y: PoleDistance, size: int, count: int, reach: float) -> Rule:
     bend, a, rho = overhang_bend(size, reach)
     moments = chebyshev_moments(y, a, count + 3)
-    angle = math.pi * (np.arange(count) + 0.5) / count
-    waves = np.cos(np.outer(np.arange(count), angle))
+    waves = circle_fourier(2 * count)[:count, :count].real * (
+        2 * count
+    )  # cos(k theta_j), theta_j = pi (2j+1)/(2 count)
     coefficients = waves * (2.0 / count)
     coefficients[0] *= 0.5
     weights = moments[:count] @ coefficients
     # an error in coefficient k >= count costs |M_k| directly and |M_(2 count - k)| by aliasing
     scale = float(np.abs(moments[count - 3 : count + 3]).max()) * 2.0
     nulls = coefficients[[count - 1, count - 2, count - 3, count - 4]] * (scale / (1.0 - 1.0 / rho))
-    x = 0.5 * (1.0 + a) * (np.cos(angle) + 1.0) - a
+    x = 0.5 * (1.0 + a) * (waves[1] + 1.0) - a
     y1 = y.plus(1)
     t, weights = bent(x, weights, y1, bend)
     _, nulls = bent(x, nulls, y1, bend)
@@ -106,10 +115,9 @@ def _ellipse(y: PoleDistance, size: int, count: int, rho_e: float) -> Rule:
     bend = symmetric_bend(size)
     rho = ellipse_parameter(1.0 / bend)
     moments = chebyshev_moments(y, 0.0, count + 1)
-    angle = 2.0 * math.pi * (np.arange(count) + 0.5) / count
     k = np.arange(count)
     # F[k] G = rho_e^k times the coefficient of w^k on |w| = rho_e, aliased with k - count
-    fourier = np.exp(-1j * np.outer(k, angle)) / count
+    points, fourier = circle_points(count), circle_fourier(count)
     # the interpolant's coefficients c_k: pairs (k, count - k) share two equations; the half-step in the angle makes
     # w^count = -rho_e^count, hence the minus signs
     damp = rho_e ** (-2.0 * k)
@@ -125,7 +133,7 @@ def _ellipse(y: PoleDistance, size: int, count: int, rho_e: float) -> Rule:
     ratio = rho_e / rho
     scale = float((np.abs(tamed) * np.minimum(1.0, ratio) ** k).sum()) + float(abs(tamed[-1]))
     nulls = scaled[[count - 1, count - 2, count - 3, count - 4]] * (scale / max(1e-3, 1.0 - ratio))
-    x = 0.5 + 0.25 * (rho_e * np.exp(1j * angle) + np.exp(-1j * angle) / rho_e)
+    x = 0.5 + 0.25 * (rho_e * points + points.conj() / rho_e)
     y1 = y.plus(1)
     t, weights = bent(x, weights, y1, bend)
     _, nulls = bent(x, nulls, y1, bend)

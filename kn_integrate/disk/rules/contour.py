@@ -29,7 +29,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from .base import NullGroup, PoleDistance, Rule
+from .base import NullGroup, PoleDistance, Rule, circle_fourier, circle_points
 
 
 @lru_cache(maxsize=64)
@@ -54,17 +54,15 @@ def contour_rule(y: PoleDistance, size: int, circle_count: int, segment_count: i
     """
     radius = fraction / size
     value = complex(y.value)
-    angle = 2.0 * math.pi * (np.arange(circle_count) + 0.5) / circle_count
-    k = np.arange(circle_count)
     shifts = y.shifts(circle_count)
-    fourier = np.exp(-1j * np.outer(k, angle)) / circle_count  # F[k] = f_k radius^k
+    fourier = circle_fourier(circle_count)  # F[k] = f_k radius^k
     power = radius**value
     circle_weights = power * ((1.0 / shifts) @ fourier)
     # what coefficient k >= circle_count does: it is aliased onto k - circle_count, whose factor is 1/(Y + k - count)
     decay = fraction ** np.arange(circle_count)
     scale = abs(power) * float((decay / np.abs(shifts)).sum())
     circle_nulls = fourier[[-1, -2, -3, -4]] * (scale / (1.0 - fraction))
-    circle = radius * np.exp(1j * angle)
+    circle = radius * circle_points(circle_count)
 
     half = -0.5 * math.log(radius)
     legendre_x, legendre_w, legendre_p = _legendre(segment_count)

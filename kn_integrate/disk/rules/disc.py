@@ -18,11 +18,9 @@ Source: Cauchy's integral by the trapezoidal rule, common practice; the map and 
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 
-from .base import NullGroup, PoleDistance, Rule, bent
+from .base import NullGroup, PoleDistance, Rule, bent, circle_fourier, circle_points
 
 
 def disc_bend(size: int, wide: bool) -> float:
@@ -46,10 +44,9 @@ def disc_rule(y: PoleDistance, size: int, count: int, wide: bool = True) -> Rule
         The large circle, or the one for clusters that face another cluster on a circle.
     """
     bend = disc_bend(size, wide)
-    angle = 2.0 * math.pi * (np.arange(count) + 0.5) / count
-    x = np.exp(1j * angle)
+    x = circle_points(count)
     shifts = y.shifts(count)
-    fourier = np.exp(-1j * np.outer(np.arange(count), angle)) / count
+    fourier = circle_fourier(count)
     weights = (1.0 / shifts) @ fourier
     ratio = disc_decay(size, wide)
     # coefficient count + k is taken for coefficient k: the error is g_(count+k) (1/(Y+k) - 1/(Y+count+k))

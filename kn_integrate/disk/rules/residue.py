@@ -13,11 +13,9 @@ Source: Cauchy's formula by the trapezoidal rule, common practice.
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 
-from .base import NullGroup, Rule, bent
+from .base import NullGroup, Rule, bent, circle_fourier, circle_points
 from .disc import disc_bend, disc_decay
 
 
@@ -39,9 +37,7 @@ def residue_rule(level: int, size: int, count: int, wide: bool = True) -> Rule:
         nothing = np.zeros((4, 1))
         return Rule("residue", np.zeros(1), np.ones(1), nothing, (NullGroup(0, 0.0, 1.0),), 1.0)
     bend = disc_bend(size, wide)
-    angle = 2.0 * math.pi * (np.arange(count) + 0.5) / count
-    x = np.exp(1j * angle)
-    fourier = np.exp(-1j * np.outer(np.arange(count), angle)) / count
+    x, fourier = circle_points(count), circle_fourier(count)
     t, weights = bent(x, fourier[level], 1.0 - level, bend)
     # coefficient count + N is taken for coefficient N
     _, nulls = bent(x, fourier[[-1, -2, -3, -4]], 1.0 - level, bend)
