@@ -12,7 +12,7 @@ from typing import Any
 import numpy as np
 from numba import njit
 
-from .sphere_rays import CELL, COLUMNS, LENGTH, ORDER, PIECES, START, UX, UY, WEIGHT, rays
+from .sphere_rays import CELL, COLUMNS, LENGTH, ORDER, PIECE, PIECES, START, UX, UY, WEIGHT, rays
 from .vecmath import exp, log, sincos
 
 BLOCK = 512
@@ -102,7 +102,7 @@ def _flush(size, cell, k, gap_x, gap_y, real, imag, spins, any_spin, any_imag, d
 
 
 @njit(**_JIT)
-def plane_sums(d, slots, excluded, outer, half, angular, radial, gauss_x, gauss_w, real, imag, spins, out):
+def plane_sums(d, slots, excluded, outer, half, angular, radial, gauss_x, gauss_w, real, imag, spins, fine, out):
     """Integrals of ``prod_t |y - w_t|^{e_t} (phase of (y - w_t))^{l_t} d^2y/pi`` over the bulk of many planes.
 
     Parameters
@@ -117,8 +117,10 @@ def plane_sums(d, slots, excluded, outer, half, angular, radial, gauss_x, gauss_
         As for :func:`.sphere_rays.rays`.
     real, imag, spins : (k,)
         Exponents ``e_t`` of the moduli and integer spins ``l_t``.
-    out : (M, 4)
-        Real and imaginary part, sum of moduli, sum of squared moduli.
+    fine : bool
+        For one state: a row of sums for each boundary piece instead of one for the state.
+    out : (M or pieces, 4)
+        Real and imaginary part, sum of moduli, sum of squared moduli; zero on entry.
 
     Returns
     -------
@@ -153,14 +155,14 @@ def plane_sums(d, slots, excluded, outer, half, angular, radial, gauss_x, gauss_
                 gap_x[i, j] = x.real if i != j else 0.0
                 gap_y[i, j] = x.imag if i != j else 0.0
         result = out[m]
-        result[:] = 0.0
         size = 0
         cell = 0
+        piece = 0
         for r in range(rows):
             row = table[r]
             parts = int(row[PIECES])
             order = int(row[ORDER])
-            if int(row[CELL]) != cell or size + parts * order > BLOCK:
+            if int(row[CELL]) != cell or size + parts * order > BLOCK or (fine and int(row[PIECE]) != piece):
                 for q in range(size):
                     lr_q = exp(lr[q])
                     dx[q] *= lr_q
@@ -172,6 +174,11 @@ def plane_sums(d, slots, excluded, outer, half, angular, radial, gauss_x, gauss_
                 nodes += size
                 size = 0
                 cell = int(row[CELL])
+                if fine:
+                    piece = int(row[PIECE])
+                    if piece >= out.shape[0]:
+                        return -1
+                    result = out[piece]
             step = row[LENGTH] / parts
             weight = row[WEIGHT] * step / np.pi
             for part in range(parts):

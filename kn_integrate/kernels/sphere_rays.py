@@ -26,7 +26,7 @@ from numba import njit
 _JIT: Any = {"cache": True, "nogil": True, "error_model": "numpy", "fastmath": {"contract"}}
 
 # Longest pieces, in sigma, in theta, and in the logarithm of the radius.
-_SIGMA, _ARC, _RADIAL = 2.2, 0.8, 1.6
+_SIGMA, _ARC, _RADIAL = 1.4, 1.2, 1.2
 # Distance of the nearest singularity from the real axis that the thinning of short pieces assumes.
 _CLEAR_ANGULAR, _CLEAR_RADIAL = 1.0, 0.8
 _TINY = 1e-13
@@ -39,11 +39,15 @@ MAX_BREAKS = 128
 
 @njit(**_JIT)
 def _order(full, length, longest, clear):
-    """Nodes for a piece as accurate as ``full`` nodes on the longest one: equal exponents of geometric convergence."""
+    """Nodes for a piece as accurate as ``full`` nodes on the longest one: equal exponents of geometric convergence.
+
+    Never below half: two nodes more on the longest piece are then one more on every piece, and comparing two orders
+    tests all pieces.
+    """
     if length >= longest:
         return full
     ratio = np.arcsinh(2.0 * clear / longest) / np.arcsinh(2.0 * clear / max(length, 1e-3))
-    return max(2, min(full, int(np.ceil(full * ratio))))
+    return max(2, min(full, int(np.ceil(full * max(ratio, 0.5)))))
 
 
 @njit(**_JIT)

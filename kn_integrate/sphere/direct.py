@@ -7,7 +7,7 @@ Errors
 ------
 *Truncation.*  The rules converge geometrically in the order.  With ``D_k`` the sum over parts of the modulus of the
 change from pass k-1 to pass k, what pass k still misses is about ``D_k q/(1-q)`` with ``q = D_k/D_{k-1}``; the larger of
-two estimates of q is taken, kept within [0.08, 0.8], and the result multiplied by a safety factor that a calibration
+two estimates of q is taken, kept within [0.05, 0.8], and the result multiplied by a safety factor that a calibration
 campaign supports (``tests/calibration/sphere_direct_campaign.py``).  Sums of moduli over parts cannot cancel by
 luck the way the change of the total can.  This is evidence from comparing orders, not a proof.
 
@@ -21,6 +21,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from itertools import combinations
 from typing import Any, Protocol
 
 import numpy as np
@@ -35,16 +36,18 @@ from .rules import MAX_ORDER, orders_of
 from .sweep import Key, Sweeper
 
 EPSILON = 2.0**-52
-SAFETY = 4.0
-SLOWEST, FASTEST = 0.8, 0.08
+SAFETY = 10.0
+SLOWEST, FASTEST = 0.8, 0.05
 MAX_N = 6
 # Angular orders: first one, step.  Three passes are needed before the rate of convergence is known.
 _LADDER = {4: (4, 2), 5: (4, 2), 6: (2, 1)}
+# Angular nodes to begin with for each unit of the largest exponent.
+_RESOLVE = {4: 0.4, 5: 0.3, 6: 0.1}
 DEFAULT_MAX_POINTS = {4: 10**7, 5: 4 * 10**8, 6: 4 * 10**9}
 # Evaluations of one pass at angular order p, measured: factor and power of a fit, a little above all samples.
-_COST = {4: (11.0, 2.0), 5: (420.0, 3.9), 6: (1.2e5, 5.6)}
+_COST = {4: (11.0, 2.0), 5: (800.0, 4.0), 6: (1.2e5, 5.6)}
 # Errors of the passes on convergent integrals with unremarkable exponents, measured: log10 of the relative error.
-_DIGITS = {4: (1.2, 0.85), 5: (2.5, 0.68), 6: (0.4, 1.1)}
+_DIGITS = {4: (1.2, 0.85), 5: (2.0, 1.0), 6: (0.4, 1.1)}
 
 
 class SphereTermLike(Protocol):
@@ -176,6 +179,13 @@ def _spread(numbers: Numbers) -> float:
     return float(np.abs(numbers.total[finite]).sum())
 
 
+def _stiffness(numbers: Numbers) -> float:
+    """The largest exponent of a disc coordinate, oscillation included: what the rules have to resolve at all."""
+    clusters = (c for size in range(2, numbers.data.n - 1) for c in combinations(range(1, numbers.data.n), size))
+    ends = [numbers.end(cluster) for cluster in clusters]
+    return max(abs(end[0]) + abs(end[1]) for end in ends)
+
+
 def integrate_terms(
     n: int,
     terms: Sequence[SphereTermLike],
@@ -254,8 +264,9 @@ def _climb(
     threads: int,
 ) -> Estimate:
     """Passes of rising order until the error is small enough, or nothing more can be gained."""
-    angular, step = _first(n, rtol), _LADDER[n][1]
-    low = _LADDER[n][0]
+    low, step = _LADDER[n]
+    stiff = max(_stiffness(sweeper.numbers) for _, sweeper, _ in sweepers)
+    angular = max(_first(n, rtol), low + step * round(_RESOLVE[n] * stiff / step))
     while angular > low and sum(_cost(n, angular + k * step) for k in range(3)) * len(sweepers) > limit:
         angular -= step
     if _cost(n, angular) * len(sweepers) > limit:

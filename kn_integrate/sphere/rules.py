@@ -33,10 +33,11 @@ class Orders:
 def orders_of(angular: int) -> Orders:
     """The orders that go with this many angular nodes.
 
-    The proportions are measured: no direction of the rule limits the others.
+    The lengths of the pieces are chosen (measured) such that equal orders limit about equally; two nodes more are then
+    at least one more on every piece, so that every piece of the rule changes from one pass to the next.
     """
     torus = 6 + 3 * angular
-    return Orders(angular, max(2, round(0.8 * angular)), torus, (11 * torus) // 20)
+    return Orders(angular, angular, torus, (11 * torus) // 20)
 
 
 @lru_cache(maxsize=1)

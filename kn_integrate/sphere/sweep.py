@@ -25,6 +25,7 @@ from .tree import Place
 Array = NDArray[Any]
 Key = tuple[int, ...]
 COLUMNS = 5
+MAX_PIECES = 128  # of a plane with two punctures
 ROWS = 16  # states in one task
 
 _NONE = np.zeros(0, dtype=np.int64)
@@ -142,6 +143,12 @@ class Sweeper:
         for p, place in enumerate(states.tree.places()):
             sums, count = self._place(states, place, cut, half, orders)
             points += count
+            if len(sums) > states.count:
+                # the constant part (z_1 - z_3 = -1 to a spin) multiplies the sums of all pieces
+                sums[:, :2] *= outer[0].real * (2.0 if half else 1.0)
+                sums[:, ABS] *= 2.0 if half else 1.0
+                found.update({(p, piece): row for piece, row in enumerate(sums) if row[ABS]})
+                continue
             scale = 2.0 if half and place.kind == "bulk" else 1.0
             value = scale * outer * (sums[:, RE] + 1j * sums[:, IM])
             size = scale * np.abs(outer)
@@ -165,6 +172,10 @@ class Sweeper:
             slots = np.array(states.tree.slots_of(place.at))
             excluded, outer = np.ascontiguousarray(cut.excluded[:, slots]), np.ascontiguousarray(cut.outer[:, place.at])
             if not tree.edges:
+                # with one plane only the boundary pieces are the parts to compare
+                fine = numbers.data.n == 4
+                if fine:
+                    sums = np.zeros((MAX_PIECES, COLUMNS))
                 others = [states.tree.slots[s].label for s in slots]
                 known = numbers.of_pairs([(label, other) for other in others])
                 # the kernel has y - w, which is z_j - z_i towards smaller labels
@@ -172,7 +183,7 @@ class Sweeper:
                 total = numbers.total[known]
                 count = plane_sums(
                     states.d, slots, excluded, outer, half, orders.angular, orders.radial, nodes, weights,
-                    total.real.copy(), total.imag.copy(), numbers.spin[known], sums,
+                    total.real.copy(), total.imag.copy(), numbers.spin[known], fine, sums,
                 )  # fmt: skip
                 if turned % 2:
                     sums[:, :2] *= -1.0
