@@ -39,6 +39,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "momentum_kernel": ("biadjoint", "inverse_klt", "klt_kernel"),
     "sphere.evaluate": ("sphere_integral",),
     "kz.matrices": ("Matrix", "f_matrix", "z_matrix"),
+    "checks.examine": ("Examination", "examine_formula"),
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
     "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
@@ -68,6 +69,7 @@ if TYPE_CHECKING:
         yang_mills_amplitude,
     )
     from .api import disk_integral, residue
+    from .checks.examine import Examination, examine_formula
     from .convergence import Convergence, converge
     from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
     from .estimate import Estimate
@@ -95,6 +97,7 @@ __all__ = [
     "EnergyLine",
     "ErrorBudget",
     "Estimate",
+    "Examination",
     "FEntry",
     "InputError",
     "Integrand",
@@ -126,6 +129,7 @@ __all__ = [
     "disk_integral",
     "energy_line",
     "error_budget",
+    "examine_formula",
     "exchange_residue",
     "f_matrix",
     "gauge_boson",
