@@ -285,11 +285,20 @@ def judged(
             status = judge(complex(number), error, request.rtol, request.atol, error)
         if status is Status.OK or not value.error:
             break
+    if request.digits is not None:
+        number = _global(number)
     if step is not None and request.digits is None:
         details = {**details, "digits used": step}
     if status is Status.ZERO and not error:
         status = Status.OK
     return Estimate(number, error, status, method, 0, request.rtol, request.atol, request.digits, details)
+
+
+def _global(number: Any) -> Any:
+    """A number of a private context as one of mpmath's own, which can be pickled."""
+    from mpmath import mp
+
+    return mp.make_mpc(number._mpc_) if hasattr(number, "_mpc_") else mp.make_mpf(number._mpf_)
 
 
 def _is_complex(number: Any) -> bool:

@@ -16,7 +16,7 @@ _VECTORS = {
     "closed_tachyon": ("k",),
     "massless_tensor": ("k", "left", "right"),
 }
-_EXPECTED = "states such as 'tachyon 1,0,0; gauge_boson 1,1,0 / 0,0,1' or an array of tables {kind=, k=, e=}"
+_EXPECTED = "states such as 'tachyon 1,0,0; gauge_boson 1,1,0 | 0,0,1' or an array of tables {kind=, k=, e=}"
 
 
 def _states(value: Any, field: str) -> tuple[dict[str, Any], ...]:
@@ -30,10 +30,10 @@ def _states(value: Any, field: str) -> tuple[dict[str, Any], ...]:
 def _state(item: Any, field: str) -> dict[str, Any]:
     if isinstance(item, str):
         kind, _, rest = item.partition(" ")
-        vectors = [piece.strip().split(",") for piece in rest.split("/")]
+        vectors = [piece.strip().split(",") for piece in rest.split("|")]
         names = _VECTORS.get(kind, ())
         if len(vectors) != len(names):
-            expected = f"{kind} {' / '.join(names)}" if names else "one of " + ", ".join(_VECTORS)
+            expected = f"{kind} {' | '.join(names)}" if names else "one of " + ", ".join(_VECTORS)
             raise InputError(field, inputs.shown(item), expected)
         item = {"kind": kind, **dict(zip(names, vectors, strict=True))}
     if not isinstance(item, dict):
@@ -56,8 +56,8 @@ STATES = Field(
     "amplitude",
     "states",
     _states,
-    "'KIND K [/ E]; ..'",
-    "States: tachyon k; gauge_boson k / e; closed_tachyon k; massless_tensor k / left / right.",
+    "'KIND K [| E]; ..'",
+    "States: tachyon k; gauge_boson k | e; closed_tachyon k; massless_tensor k | left | right.",
 )
 THEORY = Field("amplitude", "theory", inputs.choice("bosonic", "superstring"), "bosonic|superstring", "[bosonic].")
 ORDERING = Field("amplitude", "ordering", inputs.labels, "1,2,..", "Colour order of open states [sum over all].")

@@ -35,7 +35,7 @@ def square(*ks):
     return dot(total, total)
 
 
-# --- four tachyons -----------------------------------------------------------------------------------------------------
+# --- four tachyons --------------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("seed", [1, 2, 3])
@@ -98,7 +98,7 @@ def test_partial_waves_in_26_dimensions():
     assert kn.partial_waves(kn.exchange_residue(2), 25)[0] > 0
 
 
-# --- three particles -----------------------------------------------------------------------------------------------------
+# --- three particles ------------------------------------------------------------------------------------------------
 
 
 def test_three_gauge_bosons():
@@ -135,7 +135,7 @@ def test_three_tensors_are_squares():
     assert abs(found.value - 4 * pi * (ym[0] * ym[1]).value()) <= found.error + 1e-13 * abs(found.value)
 
 
-# --- gauge invariance ------------------------------------------------------------------------------------------------------
+# --- gauge invariance -----------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("n", [3, 4, 5, 6])
@@ -181,8 +181,8 @@ def test_mixed_gauge_invariance_by_both_methods(tachyons, vectors):
     zero = kn.open_amplitude(states, order, alpha)
     assert zero.value == zero.error == 0
     direct = kn.open_amplitude(states, order, alpha, method="monomials", atol=1e-6)
-    assert abs(direct.value) <= direct.error
     assert direct.ok
+    assert abs(direct.value) <= 1e-6
 
 
 @pytest.mark.parametrize("n", [3, 4, 5])
@@ -209,7 +209,7 @@ def test_closed_amplitudes_do_not_depend_on_the_order_of_states(n):
     assert abs(found.value - turned.value) <= found.error + turned.error
 
 
-# --- factorisation -----------------------------------------------------------------------------------------------------------
+# --- factorisation --------------------------------------------------------------------------------------------------
 
 
 def spacelike_point():
@@ -285,7 +285,7 @@ def test_four_gauge_bosons_factorise_on_the_gauge_boson():
         kn.open_amplitude(states, (1, 2, 3, 4), alpha)
 
 
-# --- Yang-Mills theory and the superstring ----------------------------------------------------------------------------------
+# --- Yang-Mills theory and the superstring --------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("n", [4, 5, 6])
@@ -357,7 +357,7 @@ def test_superstring_five_point_zeta2():
 
 
 def test_closed_superstring_four_point():
-    """The field-theory tree times ``prod Gamma(1+x)/Gamma(1-x)`` (Gross, Harvey, Martinec, Rohm 1985; Green-Schwarz)."""
+    """The field-theory tree times ``prod Gamma(1+x)/Gamma(1-x)`` (Green and Schwarz 1982)."""
     states = tensors(4, 81)
     k = [s.momentum for s in states]
     tree = kn.closed_superstring_amplitude(states, Fraction(1, 10**6)).value
