@@ -13,12 +13,12 @@ from functools import lru_cache
 
 from .channels import Pair, dotted, pair_index, pair_order
 from .errors import InputError
-from .exact import ZERO, Exact
+from .exact import ONE, ZERO, Exact
 
 SLACK = 1e-10  # how far floating-point input may miss conservation, relative to the largest value
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class _Pattern:
     """The eliminated row equations for one set of known pairs.
 
@@ -169,19 +169,46 @@ def _contradiction(
 
 def _projection(pattern: _Pattern, misses: Sequence[Exact], rounded: tuple[int, ...]) -> dict[int, Exact] | None:
     """The least change (sum of squares) of the rounded values that makes every check vanish; None if there is none."""
-    matrix = [[left.get(k, Fraction(0)) for k in rounded] for left, _ in pattern.checks]
-    gram = [[sum((a * b for a, b in zip(r, s, strict=True)), Fraction(0)) for s in matrix] for r in matrix]
-    weights = _solve(gram, list(misses))
-    if weights is None:
-        return None
+    matrix, inverse = _least_squares(pattern, rounded)
+    if inverse is None:
+        gram = [[sum((a * b for a, b in zip(r, s, strict=True)), Fraction(0)) for s in matrix] for r in matrix]
+        weights = _solve(gram, list(misses))
+        if weights is None:
+            return None
+        inverse, misses = tuple(zip(*matrix, strict=True)), weights
     change = {}
-    for column, k in enumerate(rounded):
+    for k, row in zip(rounded, inverse, strict=True):
         delta = ZERO
-        for row, weight in zip(matrix, weights, strict=True):
-            if row[column]:
-                delta = delta - row[column] * weight
+        for c, miss in zip(row, misses, strict=True):
+            if c:
+                delta = delta - c * miss
         change[k] = delta
     return change
+
+
+@lru_cache(maxsize=512)
+def _least_squares(
+    pattern: _Pattern, rounded: tuple[int, ...]
+) -> tuple[tuple[tuple[Fraction, ...], ...], tuple[tuple[Fraction, ...], ...] | None]:
+    """The checks as a matrix M on the rounded values, and ``M^T (M M^T)^-1`` (None when M M^T is singular).
+
+    Scans project thousands of points with the same pattern.
+    """
+    matrix = tuple(tuple(left.get(k, Fraction(0)) for k in rounded) for left, _ in pattern.checks)
+    gram = [[sum((a * b for a, b in zip(r, s, strict=True)), Fraction(0)) for s in matrix] for r in matrix]
+    columns = []
+    for place in range(len(gram)):
+        unit = [ONE if k == place else ZERO for k in range(len(gram))]
+        solved = _solve(gram, unit)
+        if solved is None:
+            return matrix, None
+        columns.append([value.re for value in solved])
+    size = range(len(gram))
+    inverse = tuple(
+        tuple(sum((matrix[i][column] * columns[k][i] for i in size), Fraction(0)) for k in size)
+        for column in range(len(rounded))
+    )
+    return matrix, inverse
 
 
 def _solve(matrix: list[list[Fraction]], right: list[Exact]) -> list[Exact] | None:
