@@ -26,7 +26,7 @@ def test_no_claimed_error_is_too_small(group):
     assert figures["too small"] == 0
 
 
-@pytest.mark.parametrize(("n", "count"), [(5, 120), (6, 60), (7, 4)])
+@pytest.mark.parametrize(("n", "count"), [(5, 120), (6, 60), (7, 3)])
 @pytest.mark.parametrize("is_complex", [False, True])
 def test_series_against_quadrature(n, count, is_complex):
     # chord exponents in (-4.9, 2): two routes that share no code must agree within both claimed errors
@@ -35,13 +35,13 @@ def test_series_against_quadrature(n, count, is_complex):
     for _ in range(count):
         pairs = exponents_from_chords(n, random_chords(n, rng, is_complex))
         try:
-            one = integrate_pairs(n, pairs, 1e-8 if n < 7 else 1e-5, 0.0, max_points=2e7)
+            one = integrate_pairs(n, pairs, 1e-8 if n < 7 else 1e-4, 0.0, max_points=2e7 if n < 7 else 2e9)
         except kn.WorkLimitError:
             continue
         other = integrate_terms(n, [DiskTerm(ONE, pairs)], rtol=1e-9)
         assert abs(one.value - other.value) <= one.error + other.error
-        compared += one.error <= 1e-6 * abs(one.value)
-    assert compared >= 0.7 * count if n < 7 else compared >= 1
+        compared += one.error <= (1e-6 if n < 7 else 1e-2) * abs(one.value)
+    assert compared >= (0.7 if n < 7 else 0.3) * count
 
 
 @pytest.mark.parametrize("n", [5, 6, 7])

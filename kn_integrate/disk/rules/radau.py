@@ -9,6 +9,9 @@ that is the Gauss-Radau rule with its preassigned node at the end where the sing
 for polynomials of degree 2N - 2, the pole at Y = 0 explicit, node and weights positive for Y > 0.  For complex Y the
 Gauss nodes are those of the complex-symmetric Jacobi matrix with eigenvectors normalised without conjugation.
 
+For Re Y > 0 the product form of W_0 (the Christoffel number of the end point, a telescoping sum) keeps its relative
+accuracy however small W_0 is, which integrands that are large at 0 need.
+
 Sources: Golub and Welsch 1969 (nodes from the tridiagonal matrix); Gauss-Radau rules, common practice; recurrence
 coefficients DLMF 18.9.2.
 """
@@ -108,9 +111,12 @@ def radau_rule(y: PoleDistance, size: int, count: int) -> Rule:
     x, w, values = gauss_jacobi(gauss, y1)
     inner = w / x
     shifts = y.shifts(count)
-    # as a difference and not by its product form: W_0 then takes up the error of the large weight next to it, whose
-    # node is close to 0 and known less well than the others, so that constants stay exact
-    end = 1.0 / shifts[0] - inner.sum()
+    if y.real > 0:
+        end = np.prod(np.arange(1, count) / shifts[1:]) ** 2 / shifts[0]
+    else:
+        # as a difference: W_0 then takes up the error of the large weight next to it, of opposite sign, whose node is
+        # close to 0 and known less well than the others, so that constants stay exact
+        end = 1.0 / shifts[0] - inner.sum()
     weights = np.concatenate([[end], inner])
     nodes_with_end = np.concatenate([[0.0], x])
     # how well the rule integrates low powers tells how accurate its nodes and weights came out
