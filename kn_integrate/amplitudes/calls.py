@@ -33,7 +33,6 @@ from ..dispatch.request import Request, make_request
 from ..errors import NotAvailableError, PoleError, Status
 from ..estimate import Estimate, judge
 from ..exact import ONE, ZERO, Exact, read
-from ..integrals import SphereIntegral
 from ..integrand import Integrand
 from ..kinematics import Mandelstams
 from .basis import UNIT, Chiral, Value, context, to_context
@@ -138,6 +137,7 @@ def closed_amplitude(
     rtol: float | None = None,
     atol: float = 0,
     digits: int | None = None,
+    method: str = "auto",
 ) -> Estimate:
     """The tree amplitude of closed-string tachyons and massless tensors.
 
@@ -151,6 +151,9 @@ def closed_amplitude(
         g; see the text of the module.
     rtol, atol, digits
         As for :func:`kn_integrate.disk_integral`.
+    method
+        ``"reduction"``: both chiral halves reduced by parts in exact arithmetic; ``"monomials"``: every product of
+        monomials by :func:`kn_integrate.sphere_integral`; ``"auto"``: the first, or the second where it has no value.
 
     Notes
     -----
@@ -161,10 +164,10 @@ def closed_amplitude(
     InputError, PoleError
         As :func:`open_amplitude`.
     NotAvailableError
-        Where single terms of the bilinear have poles that cancel in the sum.
+        ``method="reduction"`` where single disk integrals have poles or the reduction a resonance.
     """
     found = read_states(states, "closed")
-    request = make_request(rtol=rtol, atol=atol, digits=digits, methods=METHODS)
+    request = make_request(rtol=rtol, atol=atol, digits=digits, method=method, methods=METHODS)
     alpha = read_alpha_prime(alpha_prime)
     g = read(coupling, "coupling")[0]
     n = len(found)
@@ -192,15 +195,21 @@ def closed_amplitude(
         return judged(request, "exact", {}, lambda d: with_pi(plain(product, d), d), (digits,))
     kin = kinematics_of(found, alpha)
     details = {"monomials": f"{len(left.terms)} x {len(right.terms)}", "techniques": ("by-parts", "kleiss-kuijf")}
-    try:
-        halves = Chiral(kin, left), Chiral(kin, right)
-        return judged(request, "klt+kz", details, lambda d: with_pi(bilinear(*halves, d), d))
-    except (ResonanceError, PoleError, NotAvailableError, ZeroDivisionError):
-        for channel, level, at in SphereIntegral(n, left, _conjugated(right)).poles(kin):
-            raise PoleError(channel, level, at) from None
-        raise NotAvailableError(
-            "terms of the bilinear have poles at this point that cancel in the sum; move the point a little"
-        ) from None
+    if request.method != "monomials":
+        try:
+            halves = Chiral(kin, left), Chiral(kin, right)
+            return judged(request, "klt+kz", details, lambda d: with_pi(bilinear(*halves, d), d))
+        except (ResonanceError, PoleError, NotAvailableError, ZeroDivisionError) as error:
+            if request.method == "reduction":
+                raise NotAvailableError(f"the reduction has no value at this point ({error})") from None
+    from ..sphere.evaluate import sphere_integral
+
+    found_integral = sphere_integral(
+        kin, left, _conjugated(right), rtol=request.rtol, atol=request.atol, digits=request.digits
+    )
+    value = Value(found_integral.value, found_integral.error)
+    result = judged(request, found_integral.method, details, lambda d: with_pi(value, request.digits), (None,))
+    return replace(result, evaluations=found_integral.evaluations)
 
 
 def _conjugated(f: Integrand) -> Integrand:

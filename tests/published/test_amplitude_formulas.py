@@ -197,6 +197,22 @@ def test_closed_gauge_invariance_is_exact(n):
         assert kn.closed_amplitude(changed, ALPHA).value == 0
 
 
+def test_four_tensors_by_integration_over_the_plane():
+    """The same amplitude by direct integration of all products of monomials, which uses neither reduction nor KLT."""
+    states = tensors(4, 26)
+    kin = kn.Mandelstams.from_momenta([s.momentum for s in states], alpha_prime=ALPHA, string="closed")
+    f, g = (kn.vertex_integrand(states, ALPHA, side) for side in ("left", "right"))
+    found = kn.closed_amplitude(states, ALPHA)
+    direct = kn.sphere_integral(kin, f, g, method="direct", rtol=1e-8)
+    assert direct.ok
+    # (8 pi/alpha') (2 pi) (alpha'/2)^4
+    factor = 8 * pi * 20 * 2 * pi / 40**4
+    assert abs(found.value - factor * direct.value) <= found.error + 1e-8 * abs(found.value)
+    monomials = kn.closed_amplitude(states, ALPHA, method="monomials")
+    assert monomials.ok
+    assert abs(found.value - monomials.value) <= 1e-10 * abs(found.value)
+
+
 @pytest.mark.parametrize("n", [4, 5])
 def test_closed_amplitudes_do_not_depend_on_the_order_of_states(n):
     """The bilinear singles out three legs; the amplitude must not."""
