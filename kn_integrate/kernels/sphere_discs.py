@@ -251,7 +251,7 @@ def disc_sums(
     pairs, e_re, e_im, spin, edge_slots, powers_re, powers_im, shifts, base, nearest,
     factors, starts, terms, a, bc, mirror, length, kept, out,
 ):  # fmt: skip
-    """Integrals over all discs of a tree, for many states, and over the bulk coordinate of the last point if it has one.
+    """Integrals over all discs of a tree, for many states, and over the last point's bulk coordinate if it has one.
 
     Parameters
     ----------

@@ -23,6 +23,8 @@ from typing import Any
 import numpy as np
 from numba import njit
 
+from .vecmath import exp, log, sincos
+
 _JIT: Any = {"cache": True, "nogil": True, "error_model": "numpy", "fastmath": {"contract"}}
 
 # Longest pieces, in sigma, in theta, and in the logarithm of the radius.
@@ -38,6 +40,13 @@ MAX_BREAKS = 128
 
 
 @njit(**_JIT)
+def _asinh(x):
+    """Inverse hyperbolic sine; the sums of rays spend their time here, and the library function is a slow call."""
+    size = log(abs(x) + np.sqrt(x * x + 1.0))
+    return -size if x < 0.0 else size
+
+
+@njit(**_JIT)
 def _order(full, length, longest, clear):
     """Nodes for a piece as accurate as ``full`` nodes on the longest one: equal exponents of geometric convergence.
 
@@ -46,21 +55,16 @@ def _order(full, length, longest, clear):
     """
     if length >= longest:
         return full
-    ratio = np.arcsinh(2.0 * clear / longest) / np.arcsinh(2.0 * clear / max(length, 1e-3))
+    ratio = _asinh(2.0 * clear / longest) / _asinh(2.0 * clear / max(length, 1e-3))
     return max(2, min(full, int(np.ceil(full * max(ratio, 0.5)))))
 
 
 @njit(**_JIT)
-def _reach(theta, active, h, phi, cx, cy, outer):
-    """Distance to one constraint in direction theta; infinite when the ray moves away from a bisector."""
-    if active < 0:
-        ux = np.cos(theta)
-        uy = np.sin(theta)
-        along = cx * ux + cy * uy
-        across = cx * uy - cy * ux
-        return along + np.sqrt(max(outer * outer - across * across, 0.0))
-    c = np.cos(theta - phi[active])
-    return h[active] / c if c > 1e-12 else np.inf
+def _circle(ux, uy, cx, cy, outer):
+    """Distance to the outer circle, centre (cx, cy), along a unit vector."""
+    along = cx * ux + cy * uy
+    across = cx * uy - cy * ux
+    return along + np.sqrt(max(outer * outer - across * across, 0.0))
 
 
 @njit(**_JIT)
@@ -144,21 +148,27 @@ def rays(d, slots, k, excluded, outer, half, angular, radial, gauss_x, gauss_w, 
             breaks[kept] = 0.0
             breaks[kept + 1] = np.pi
             count = kept + 2
-        breaks[:count].sort()
+        for b in range(1, count):
+            value = breaks[b]
+            at = b - 1
+            while at >= 0 and breaks[at] > value:
+                breaks[at + 1] = breaks[at]
+                at -= 1
+            breaks[at + 1] = value
         if not half:
             breaks[count] = breaks[0] + 2.0 * np.pi
             intervals = count
         else:
             intervals = count - 1
         for b in range(intervals):
-            middle = 0.5 * (breaks[b] + breaks[b + 1])
+            uy, ux = sincos(0.5 * (breaks[b] + breaks[b + 1]))
             best = -1
-            least = _reach(middle, -1, h, phi, cx, cy, outer)
+            least = _circle(ux, uy, cx, cy, outer)
             for j in range(k):
                 if j != i:
-                    value = _reach(middle, j, h, phi, cx, cy, outer)
-                    if value < least:
-                        least = value
+                    cosine = nx[j] * ux + ny[j] * uy
+                    if cosine > 1e-12 and h[j] < least * cosine:
+                        least = h[j] / cosine
                         best = j
             kinds[b] = best
         # merge neighbours with the same constraint; on a full turn begin where it changes
@@ -186,8 +196,8 @@ def rays(d, slots, k, excluded, outer, half, angular, radial, gauss_x, gauss_w, 
             if kind >= 0:
                 # bring both ends next to phi before the tangent
                 turn = 2.0 * np.pi * np.round((0.5 * (lo + hi) - phi[kind]) / (2.0 * np.pi))
-                start = np.arcsinh(np.tan(lo - turn - phi[kind]))
-                stop = np.arcsinh(np.tan(hi - turn - phi[kind]))
+                start = _asinh(np.tan(lo - turn - phi[kind]))
+                stop = _asinh(np.tan(hi - turn - phi[kind]))
                 longest = _SIGMA
             else:
                 start = lo
@@ -202,9 +212,14 @@ def rays(d, slots, k, excluded, outer, half, angular, radial, gauss_x, gauss_w, 
                 top = 0.0
                 for probe in range(3):
                     t = left + 0.5 * probe * step
-                    reach = h[kind] * np.cosh(t) if kind >= 0 else _reach(t, -1, h, phi, cx, cy, outer)
+                    if kind >= 0:
+                        grown = exp(t)
+                        reach = 0.5 * h[kind] * (grown + 1.0 / grown)
+                    else:
+                        uy, ux = sincos(t)
+                        reach = _circle(ux, uy, cx, cy, outer)
                     top = max(top, reach)
-                length = max(np.log(top) - log_e, 0.0)
+                length = max(log(top) - log_e, 0.0)
                 pieces = max(1, int(np.ceil(length / _RADIAL - 1e-9)))
                 radial_order = _order(radial, length / pieces, _RADIAL, _CLEAR_RADIAL)
                 if rows + order > table.shape[0]:
@@ -213,22 +228,23 @@ def rays(d, slots, k, excluded, outer, half, angular, radial, gauss_x, gauss_w, 
                     t = left + step * gauss_x[order, q]
                     weight = step * gauss_w[order, q]
                     if kind >= 0:
-                        cosh = np.cosh(t)
-                        sine = np.tanh(t)
-                        weight /= cosh
-                        ux = nx[kind] / cosh - ny[kind] * sine
-                        uy = ny[kind] / cosh + nx[kind] * sine
+                        grown = exp(t)
+                        cosh = 0.5 * (grown + 1.0 / grown)
+                        cosine = 1.0 / cosh
+                        sine = 0.5 * (grown - 1.0 / grown) * cosine
+                        weight *= cosine
+                        ux = nx[kind] * cosine - ny[kind] * sine
+                        uy = ny[kind] * cosine + nx[kind] * sine
                         reach = h[kind] * cosh
                     else:
-                        ux = np.cos(t)
-                        uy = np.sin(t)
-                        reach = _reach(t, -1, h, phi, cx, cy, outer)
+                        uy, ux = sincos(t)
+                        reach = _circle(ux, uy, cx, cy, outer)
                     row = table[rows]
                     row[CELL] = i
                     row[UX] = ux
                     row[UY] = uy
                     row[START] = log_e
-                    row[LENGTH] = np.log(reach) - log_e
+                    row[LENGTH] = max(log(reach) - log_e, 0.0)
                     row[WEIGHT] = weight
                     row[PIECES] = pieces
                     row[ORDER] = radial_order

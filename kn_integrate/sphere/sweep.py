@@ -39,8 +39,8 @@ class Sweep:
     Attributes
     ----------
     parts : dict
-        By part: (real, imaginary, sum of moduli, sum of squares, left out by Taylor series).  A part is a boundary piece
-        of the first bulk coordinate together with the places of the points before it; what comes after is summed, for
+        By part: (real, imaginary, sum of moduli, sum of squares, left out by Taylor series).  A part is a boundary
+        piece of the first bulk coordinate with the places of the points before it; what comes after is summed, for
         only the sum over all places is a smooth function of the coordinates before.
     points : int
         Evaluations.
@@ -51,7 +51,7 @@ class Sweep:
 
     def total(self) -> Array:
         """The sum over parts."""
-        return np.sum(list(self.parts.values()), axis=0)
+        return np.asarray(np.sum(list(self.parts.values()), axis=0))
 
 
 class Sweeper:
@@ -65,11 +65,16 @@ class Sweeper:
     def run(self, orders: Orders, threads: int = 1) -> Sweep:
         """One pass."""
         tasks = list(self._tasks(orders))
+
+        def work(task: tuple[States, Key, int]) -> tuple[dict[Key, Array], int]:
+            states, key, done = task
+            return self._work(states, key, done, orders)
+
         if threads > 1 and len(tasks) > 1:
             with ThreadPoolExecutor(threads) as pool:
-                results = list(pool.map(lambda task: self._work(*task, orders), tasks))
+                results = list(pool.map(work, tasks))
         else:
-            results = [self._work(*task, orders) for task in tasks]
+            results = [work(task) for task in tasks]
         parts: dict[Key, Array] = {}
         points = 0
         for found, count in results:

@@ -15,8 +15,8 @@ The point of the root chart that is at infinity is the last puncture.  With |S| 
 A further point y has four kinds of place: the bulk of a chart; a disc about a point (which becomes an edge with a new
 chart {point at 0, y at 1}); the outside of the root (a new root {old root as an edge at 0, y at 1}); an annulus about
 an edge, between parent and child (a new chart {child as an edge at 0, y at 1} put in between, the old q = u v).
-Beginning with the chart {first at 0, last finite one at 1} and inserting the others one by one gives every stratum of the
-moduli space once: 1 + 3 for n = 4, 1 + 10 + 15 for n = 5, 1 + 25 + 105 + 105 for n = 6.
+Beginning with the chart {first at 0, last finite one at 1} and inserting the others one by one gives every stratum of
+the moduli space once: 1 + 3 for n = 4, 1 + 10 + 15 for n = 5, 1 + 25 + 105 + 105 for n = 6.
 
 How the numbers are kept: not coordinates but differences ``d[s, t] = w_s - w_t`` of slots of the same chart, so nothing
 is lost however small a cluster is against the rest.
@@ -26,7 +26,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from itertools import combinations
+from itertools import combinations, pairwise
 
 
 @dataclass(frozen=True)
@@ -137,7 +137,7 @@ class Tree:
     def _terms(self, path: tuple[int, ...], sign: int) -> list[tuple[int, int, int, int]]:
         """Position of a point below the first slot of its path, as a polynomial in the disc coordinates."""
         terms, mask = [], 0
-        for upper, lower in zip(path, path[1:], strict=False):
+        for upper, lower in pairwise(path):
             mask |= 1 << self.edges.index(upper)
             origin = self.slots_of(self.slots[lower].chart)[0]
             if lower != origin:
