@@ -22,7 +22,7 @@ from .expression import Affine, affine_form, parse, solve
 from .expression.parser import is_name
 
 KINDS = ("inside", "continued", "inside", "near pole", "complex", "continued", "inside", "complex continued")
-_DENOMINATOR = 1009
+_DENOMINATOR = 100_003
 _ATTEMPTS = 400
 
 
@@ -211,9 +211,9 @@ class Locus:
         return None
 
     def _number(self, k: int, kind: str, rng: Any, shrink: int) -> Exact:
-        low, high = (-2500, 1300) if "continued" in kind or kind == "any" else (40, 900 // shrink)
+        low, high = (-250_000, 130_000) if "continued" in kind or kind == "any" else (4_000, 90_000 // shrink)
         real = Fraction(rng.randint(low, high), _DENOMINATOR) - self._offset_of(k)
-        imag = Fraction(rng.randint(-700, 700), _DENOMINATOR) if "complex" in kind else 0
+        imag = Fraction(rng.randint(-70_000, 70_000), _DENOMINATOR) if "complex" in kind else 0
         return Exact(real, imag)
 
     def _offset_of(self, k: int) -> int:

@@ -144,9 +144,7 @@ def right() -> list[Planted]:
         Planted(WHIPPLE, D5, {"a+b": "1", "e+f": "1+2*c"}, {**ABC, "e": "s45+s34", "f": "s12+s23"}),
         Planted(SELBERG5, T5, W5, {**AL_BE_G, "be": "s24+1"}),
         Planted(CHAIN6, D6, {"s24": "0", "s25": "0", "s35": "0"}),
-        Planted(
-            CHAIN6 + "*pFq(-s25,s12,X.1.2.3,s56;s12+s23,X.1.2.3+s34,s56+s45;1)", D6, {"s24": "0", "s35": "0"}
-        ),
+        Planted(CHAIN6 + "*pFq(-s25,s12,X.1.2.3,s56;s12+s23,X.1.2.3+s34,s56+s45;1)", D6, {"s24": "0", "s35": "0"}),
         Planted(CHAIN6 + "*hyp3f2(-s24,s12,X.1.2.3;s12+s23,X.1.2.3+s34;1)", D6, {"s25": "0", "s35": "0"}),
         Planted(SELBERG6, T6, W6, {**AL_BE_G, "be": "s25+1"}),
         Planted(ANDERSON, T6, WA, PA),
@@ -233,8 +231,8 @@ def main() -> None:
             tally["wrong rejected"] += result.verdict == "disagrees"
             good = result.kind in planted.kinds and result.verdict == "disagrees"
             tally["kind named"] += good
-        if not good:
-            print(f"{planted.formula} [{', '.join(planted.kinds)}] n={planted.spec.n}, {seconds:.1f} s: {result.kind}: {result}", flush=True)
+        head = f"{'ok' if good else 'MISSED'} {seconds:.1f} s, n={planted.spec.n}, {'/'.join(planted.kinds) or 'right'}"
+        print(f"{head}: {planted.formula}" + ("" if good else f" -> {result.kind}: {result}"), flush=True)
     for name, count in tally.items():
         print(f"{name}: {count}")
     print(f"slowest: {slowest:.1f} s")
