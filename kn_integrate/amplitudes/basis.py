@@ -187,11 +187,21 @@ def _zero() -> Any:
     return mpmath.mpf(0)
 
 
+def magnitude(value: Exact) -> float:
+    """The modulus; infinite beyond the range of doubles."""
+    try:
+        return abs(value)
+    except OverflowError:
+        return math.inf
+
+
 def contracted(vector: Sequence[Exact], values: Sequence[Any], errors: Sequence[float], digits: int | None) -> Value:
     """``sum_w c_w F_w`` with a bound: errors of F, and the rounding of the sum itself."""
-    error = sum(abs(c) * e for c, e in zip(vector, errors, strict=True))
-    size = sum(abs(c) * float(abs(v)) for c, v in zip(vector, values, strict=True))
+    error = sum(magnitude(c) * e for c, e in zip(vector, errors, strict=True))
+    size = sum(magnitude(c) * float(abs(v)) for c, v in zip(vector, values, strict=True))
     if digits is None:
+        if not math.isfinite(size) or not math.isfinite(error):
+            return Value(math.nan, math.inf)
         parts = [c.value() * v for c, v in zip(vector, values, strict=True)]
         if all(isinstance(part, float) for part in parts):
             return Value(math.fsum(parts), error + 2 * UNIT * size)
