@@ -36,7 +36,7 @@ from .rules import MAX_ORDER, orders_of
 from .sweep import Key, Sweeper
 
 EPSILON = 2.0**-52
-SAFETY = 10.0
+SAFETY = 8.0
 SLOWEST, FASTEST = 0.8, 0.1
 MAX_N = 6
 # Angular orders: first one, step.  Three passes are needed before the rate of convergence is known.
