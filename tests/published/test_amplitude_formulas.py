@@ -176,13 +176,13 @@ def test_mixed_gauge_invariance_by_both_methods(tachyons, vectors):
     direct = kn.open_amplitude(states, order, alpha, method="monomials")
     assert found.ok
     assert direct.ok
-    assert abs(found.value - direct.value) <= 1e-10 * abs(found.value)
+    assert abs(found.value - direct.value) <= found.error + direct.error
     states[-1] = kn.gauge_boson(k[-1], k[-1])
     zero = kn.open_amplitude(states, order, alpha)
     assert zero.value == zero.error == 0
     direct = kn.open_amplitude(states, order, alpha, method="monomials", atol=1e-6)
     assert direct.ok
-    assert abs(direct.value) <= 1e-6
+    assert abs(direct.value) <= direct.error
 
 
 @pytest.mark.parametrize("n", [3, 4, 5])
