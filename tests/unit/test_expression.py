@@ -111,7 +111,52 @@ def test_out_of_range(text: str) -> None:
         value(text)
 
 
-PIECES = ["s12", "s.1.2", "X.1.2", "a", "1", "2.5", "e", "1e9", "(", ")", "+", "-", "*", "/", "^", "**", "gamma(", "beta(", "hyp3f2(", "pFq(", "exp(", "log(", "zeta(", "sin(", ";", ",", "i", "pi", "__import__", "os.system", ".", "'", '"', "[", "]", "{", "}", "lambda", ":", "=", "eval(", "open(", "0", "é"]
+PIECES = [
+    "s12",
+    "s.1.2",
+    "X.1.2",
+    "a",
+    "1",
+    "2.5",
+    "e",
+    "1e9",
+    "(",
+    ")",
+    "+",
+    "-",
+    "*",
+    "/",
+    "^",
+    "**",
+    "gamma(",
+    "beta(",
+    "hyp3f2(",
+    "pFq(",
+    "exp(",
+    "log(",
+    "zeta(",
+    "sin(",
+    ";",
+    ",",
+    "i",
+    "pi",
+    "__import__",
+    "os.system",
+    ".",
+    "'",
+    '"',
+    "[",
+    "]",
+    "{",
+    "}",
+    "lambda",
+    ":",
+    "=",
+    "eval(",
+    "open(",
+    "0",
+    "é",
+]
 
 
 def _formula(rng: random.Random, depth: int) -> str:
