@@ -89,9 +89,8 @@ def main() -> None:
             seconds, found = timed(partial(integrate_terms, n, [term], rtol=rtol), repeats)
             true = abs(found.value / truth - 1)
             claimed = found.error / abs(found.value)
-            print(
-                f"{rtol:>30.0e} {found.evaluations:>12d} {seconds:9.4f} {claimed:10.1e} {true:14.1e}  {found.status.name}"
-            )
+            numbers = f"{found.evaluations:>12d} {seconds:9.4f} {claimed:10.1e} {true:14.1e}"
+            print(f"{rtol:>30.0e} {numbers}  {found.status.name}")
         print(f"n = {n}   Sobol points                  points   seconds   true error")
         for log2 in (14, 17, 20):
             seconds, value = timed(partial(quasi_monte_carlo, form, log2), 1)

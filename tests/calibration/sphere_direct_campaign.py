@@ -197,17 +197,23 @@ def report(found: list[Trial]) -> str:
 def main() -> None:
     numbers = [int(x) for x in sys.argv[1:]]
     four, five, six, seed = (numbers + [2000, 200, 0, 1][len(numbers) :])[:4]
-    found = list(trials4(four, seed))
-    print(report(found), flush=True)
-    more = [*trials_selberg(5, five // 2, seed), *trials_generic(five // 2, seed)]
-    print(report(more), flush=True)
-    for t in sorted(found + more, key=lambda t: -t.ratio)[:12]:
-        print(t)
-    if six:
-        last = list(trials_selberg(6, six, seed, ("convergent", "mild")))
-        print(report(last))
-        for t in last:
-            print(t)
+    groups = [
+        trials4(four, seed),
+        trials_selberg(5, five // 2, seed),
+        trials_generic(five // 2, seed),
+        trials_selberg(6, six, seed, ("convergent", "mild")),
+    ]
+    for group in groups:
+        found: list[Trial] = []
+        try:
+            for result in group:
+                found.append(result)
+                if result.ratio > 0.5 or result.n == 6:
+                    print(result, flush=True)
+        except KeyboardInterrupt:
+            print("interrupted")
+        if found:
+            print(report(found), flush=True)
 
 
 if __name__ == "__main__":
