@@ -61,7 +61,7 @@ class Ratios:
 
     def both(self, kin: Mandelstams) -> tuple[Big, Big] | None:
         """Formula and integral at a point, None where one has no value."""
-        digits = self.lab.digits + 10
+        digits = self.lab.digits + 2
         try:
             integral = self.lab.source(self.lab.spec, kin, digits).number(self.ctx)
             return self.lab.formula.at(kin, digits).number(self.ctx), integral
@@ -177,7 +177,7 @@ def other(ratios: Ratios) -> Diagnosis | None:
     points = [kin for kin in (ratios.draw("inside"), ratios.draw("any"), ratios.draw("any")) if kin is not None]
     if len(points) < 3:
         return None
-    digits = ratios.lab.digits + 10
+    digits = ratios.lab.digits + 2
 
     def formula(kin: Mandelstams) -> Big | None:
         try:

@@ -311,12 +311,12 @@ def _counterexample(lab: Laboratory, bad: list[Trial], rng: random.Random) -> st
     best = min(bad, key=lambda t: _height(t.kin))
     locus = lab.locus
     candidates = []
-    for denominator in (2, 3, 4, 5, 6, 7, 10):
-        for _ in range(12):
+    for denominator in (2, 3, 5, 7):
+        for _ in range(6):
             kin = simple_point(locus, rng, denominator)
             if kin is not None and lab.region(kin) == best.region:
                 candidates.append(kin)
-    for kin in sorted(candidates, key=_height)[:12]:
+    for kin in sorted(candidates, key=_height)[:4]:
         if _height(kin) >= _height(best.kin):
             break
         trial = lab.trial(kin)

@@ -53,21 +53,21 @@ class TextFormula:
     def at(self, kin: Mandelstams, digits: int) -> Measured:
         """Two precisions give the value and its error; where they differ too much, higher ones."""
         parameters = self.locus.values_of(kin)
-        working = digits + 12
+        working = digits + 5
         last = evaluate(self.node, context(working), kin.channel, parameters)
         for _ in range(4):
-            working += working // 3 + 15
+            working += working // 5 + 8
             ctx = context(working)
             value = evaluate(self.node, ctx, kin.channel, parameters)
             error = abs(value - ctx.convert(ordinary(last)))
-            if error <= abs(value) * ctx.mpf(10) ** -digits:
+            if error <= max(abs(value), ctx.mpf(10) ** -digits) * ctx.mpf(10) ** -digits:
                 break
             last = value
         return Measured(value, ordinary(error))
 
     def quick(self, kin: Mandelstams, digits: int) -> Any:
         """The value at one precision, without an error."""
-        return evaluate(self.node, context(digits + 20), kin.channel, self.locus.values_of(kin))
+        return evaluate(self.node, context(digits + 8), kin.channel, self.locus.values_of(kin))
 
 
 class Point:
