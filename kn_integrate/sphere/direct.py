@@ -38,6 +38,7 @@ from .sweep import Key, Sweeper
 EPSILON = 2.0**-52
 SAFETY = 8.0
 SLOWEST, FASTEST = 0.8, 0.1
+LUCK = 2e-3
 MAX_N = 6
 # Angular orders: first one, step.  Three passes are needed before the rate of convergence is known.
 _LADDER = {4: (4, 2), 5: (4, 2), 6: (2, 1)}
@@ -143,7 +144,9 @@ class _Trail:
             if len(self.changes) > 2 and self.changes[-3] > 0:
                 rate = max(rate, math.sqrt(last / self.changes[-3]))
         rate = min(max(rate, FASTEST), SLOWEST)
-        return SAFETY * last * rate / (1.0 - rate)
+        bound = SAFETY * last * rate / (1.0 - rate)
+        # two passes can agree by luck: the change before bounds what two further steps can have gained
+        return max(bound, LUCK * self.changes[-2]) if len(self.changes) > 1 else bound
 
 
 @dataclass(frozen=True)
