@@ -83,11 +83,13 @@ class Estimate:
         # Lazily computed pieces hold closures; a result sent to another process carries their values instead.
         state = {name: getattr(self, name) for name in self.__dataclass_fields__ if name != "_sensitivity"}
         state["details"] = dict(self.details)
+        state["value"] = _packed(self.value)
         state["input_sensitivity"] = self.input_sensitivity
         return state
 
     def __setstate__(self, state: dict[str, Any]) -> None:
         sensitivity = state.pop("input_sensitivity")
+        state["value"] = _unpacked(state["value"])
         for name, value in state.items():
             object.__setattr__(self, name, value)
         object.__setattr__(self, "details", MappingProxyType(dict(self.details)))
@@ -149,3 +151,20 @@ class Estimate:
         from .report.plain import estimate_to_dict
 
         return estimate_to_dict(self)
+
+
+def _packed(value: Any) -> Any:
+    """A value that survives pickling with all its digits: mpmath rounds its numbers to the precision at unpickling."""
+    for kind in ("_mpf_", "_mpc_"):
+        if hasattr(value, kind):
+            return (kind, getattr(value, kind))
+    return value
+
+
+def _unpacked(value: Any) -> Any:
+    if not isinstance(value, tuple):
+        return value
+    from mpmath import mp
+
+    kind, raw = value
+    return mp.make_mpf(raw) if kind == "_mpf_" else mp.make_mpc(raw)

@@ -30,9 +30,9 @@ class Outcome:
         Sum of the moduli of all terms: what round-off is relative to in the worst case.
     square : float
         Root of the sum of the squares of all terms: what independent errors of the terms add up to.
-    weight_noise : float
-        Root of the sum over chords and nodes of (noise of the rule x what the node contributes)^2: what independent
-        errors of the weights add up to, in units of round-off.
+    weight_noise, weight_noise_sum : float
+        What errors of the weights cost, in units of round-off, over all chords and nodes: added as independent ones
+        (root of the sum of squares), and added up.
     truncation : (chords,) array
         Error of the rule of each chord, as extrapolated from its null functionals.
     decay : (chords,) array
@@ -46,6 +46,7 @@ class Outcome:
     absolute: float
     square: float
     weight_noise: float
+    weight_noise_sum: float
     truncation: NDArray[np.float64]
     decay: NDArray[np.float64]
     least: float
@@ -207,7 +208,7 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
     points = 0
     null_rows = max(rule.nulls.shape[0] for rule in rules)
     null_sums = np.zeros((len(rules), null_rows))
-    contributions = np.zeros((len(rules), width), dtype=complex)
+    noise_sums = np.zeros((len(rules), width))
 
     for is_complex in (False, True):
         sectors = chosen[complex_sector == is_complex]
@@ -244,6 +245,10 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
         marginal = np.add.reduceat(out_marginal, starts, axis=0)
         rows = variables[sectors]
         terms = weights[rows] * marginal
+        noise_table = np.zeros((len(all_rules), width))
+        for row, rule in enumerate(all_rules):
+            noise_table[row, : rule.count] = rule.noise
+        np.add.at(noise_sums, layout.rows[sectors], noise_table[rows] * np.abs(marginal))
         null_table = np.zeros((len(all_rules), null_rows, width), dtype=dtype)
         for row, rule in enumerate(all_rules):
             if is_complex or rule.is_real:
@@ -253,22 +258,20 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
             terms, nulls = terms.real, nulls.real
         total += terms[:, 0].sum()
         np.add.at(null_sums, layout.rows[sectors], np.abs(nulls))
-        np.add.at(contributions, layout.rows[sectors], terms)
 
     truncation = np.zeros(table.chord_count)
     decay = np.zeros(table.chord_count)
-    noise = 0.0
     for k, (c, rule) in enumerate(zip(layout.chord.tolist(), rules, strict=True)):
         error, ratio = _extrapolate(rule, null_sums[k])
         truncation[c] += error
         decay[c] = max(decay[c], ratio)
-        noise = math.hypot(noise, rule.noise * float(np.linalg.norm(contributions[k])))
     total = complex(total)
     return Outcome(
         value=total.real if real_result else total,
         absolute=absolute,
         square=math.sqrt(square),
-        weight_noise=noise,
+        weight_noise=float(np.sqrt((noise_sums**2).sum())),
+        weight_noise_sum=float(noise_sums.sum()),
         truncation=truncation,
         decay=decay,
         least=least,

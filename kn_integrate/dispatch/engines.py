@@ -93,16 +93,17 @@ def _auto(n: int, terms: Sequence[Term], request: Request) -> Estimate:
     first, second = (_quadrature, _kz_auto) if quadrature_first else (_kz_auto, _quadrature)
     try:
         result = first(n, terms, request)
-    except WorkLimitError:
+    except (WorkLimitError, NotAvailableError) as refused:
         if not quadrature_first:
             raise
-        return _noted(_kz_auto(n, terms, request), what + "; quadrature is above the limit of work")
+        why = "above the limit of work" if isinstance(refused, WorkLimitError) else "not available at such exponents"
+        return _noted(_kz_auto(n, terms, request), f"{what}; quadrature is {why}")
     if result.ok or (not quadrature_first and seconds > TOO_LONG):
         return _noted(result, what)
     name = result.method
     try:
         other = second(n, terms, request)
-    except WorkLimitError:
+    except (WorkLimitError, NotAvailableError):
         return _noted(result, what)
     best = other if _better(other, result) else result
     best = replace(best, evaluations=result.evaluations + other.evaluations)

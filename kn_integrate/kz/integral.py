@@ -27,6 +27,7 @@ UNIT = 2.0**-53
 MAX_LEGS, MAX_PRECISE_LEGS = 11, 9
 MAX_WORKING_DIGITS = 4000
 MARGIN = 3.0
+MAX_FOR_DOUBLE = (400.0, 150.0)  # working digits spent on a value that will be a double; n <= 7, above
 CIRCLE, RADIUS = 32, 0.3  # points and relative radius of the mean over a circle, double precision
 PRECISE_CIRCLE = 8
 
@@ -285,6 +286,8 @@ def _escalated(
         error = (difference + 10.0 ** -min(rough, 300.0) * size) * (scale if linear else 1.0)
         if (linear and error <= max(atol, rtol * size)) or working > MAX_WORKING_DIGITS:
             break
+        if digits is None and working > MAX_FOR_DOUBLE[points[0][1].n > 7]:  # a zero, for all that a double can tell
+            break
         if error <= atol:  # a zero: the values themselves are below what was asked
             break
         short = math.log10(error / max(rtol * size, atol, 1e-300)) if linear else 10.0
@@ -292,7 +295,7 @@ def _escalated(
     value: Any = high
     if digits is None:
         value = float(high) if real else complex(high)
-        error += UNIT * abs(value) * 2
+        error += UNIT * abs(value) * 2 + 5e-324  # never zero: the value itself may have underflowed
     status = judge(complex(value), error, rtol, atol, error)
     details = {"choice": "multiple precision", "integrals": len(points), "working digits": steps}
     return Estimate(value, error, status, "kz", count, rtol, atol, digits, details)

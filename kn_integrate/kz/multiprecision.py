@@ -6,6 +6,7 @@ comes from comparing two working precisions instead.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from typing import Any
 
@@ -78,7 +79,8 @@ def _step(legs: int, inside: Callable[[int], Any], start: list[Any], zero: Any, 
     for row, value in zip(pattern.full.tolist(), start, strict=True):
         c[row] = value
     growth = max([0.0, *(_real(v) for v in a_diagonal)]) + max([0.0, *(-_real(v) for v in b_diagonal)])
-    count = _count(growth, epsilon)
+    largest = max(abs(complex(v)) for v in (*a_diagonal, *b_diagonal, rho))
+    count = max(_count(growth, epsilon), math.ceil(largest) + math.ceil(3.33 * epsilon))
     half = one / 2
     a_order, b_order = pattern.a.order.tolist(), pattern.b.order.tolist()
 

@@ -15,6 +15,7 @@ from .point import Point, split, subset_sums
 
 EPSILON = 2.0**-52
 MAX_TERMS = 20_000
+LONGEST = 1000  # beyond this 2^-k leaves the range of doubles: such exponents are left to more digits
 HALF = 0.5  # where the two series meet
 
 
@@ -46,7 +47,8 @@ def f_vector(point: Point, noise: float, seed: int) -> NDArray[Any]:
     Returns
     -------
     ((n-3)!, 4) array
-        In the order of the permutations of the labels 2..n-2; lane 0 is the result; not finite at an exact resonance.
+        In the order of the permutations of the labels 2..n-2; lane 0 is the result; not finite at an exact resonance,
+        nor for exponents in the hundreds.
     """
     s = point.table()
     generator = np.random.default_rng(seed)
@@ -105,7 +107,11 @@ def _step(legs: int, point: Point, s: NDArray[Any], start: NDArray[Any], noise: 
     c = np.zeros((rows, LANES), dtype=s.dtype)
     c[pattern.full] = start
     growth = max(0.0, float(a_diagonal.real.max())) + max(0.0, -float(b_diagonal.real.min()))
-    count = terms_needed(HALF, growth, 1e-18)
+    # a factor like (1 - x)^mu with a large mu has binomial coefficients that fall only beyond k = |mu|
+    largest = max(float(np.abs(a_diagonal).max()), float(np.abs(b_diagonal).max()), abs(rho_value))
+    count = max(terms_needed(HALF, growth, 1e-18), math.ceil(largest) + 62)
+    if count > LONGEST:
+        return np.full((len(pattern.target), LANES), np.nan, dtype=s.dtype)
     total, work, series, extra, u, tail = (np.zeros((rows, LANES), dtype=s.dtype) for _ in range(6))
     seeds = generator.integers(1, 2**40, 2)
     left_series(

@@ -178,7 +178,7 @@ def _identity(group: Group, rng: np.random.Generator) -> tuple[bool, float, floa
         if any(y.is_integer and y <= 0 for y in _chords(n, exponents)):
             return True, 0.0, 0.0, rtol  # a shift of the identity hit a pole exactly; nothing to compare
         results.append((sign, integrate_pairs(n, exponents, rtol, 0.0, max_points=group.limit)))
-    size = max(abs(result.value) for _, result in results)
+    size = max(abs(result.value) for _, result in results) or 1.0
     residual = abs(sum(sign * result.value for sign, result in results)) / size
     claimed = sum(result.error for _, result in results) / size + 4 * EPSILON
     ok = all(result.error <= rtol * abs(result.value) for _, result in results)

@@ -90,8 +90,9 @@ class Rule:
     groups : tuple of NullGroup
     amplification : float
         ``sum |weights|``, relative to a function of size one: what round-off is multiplied with.
-    noise : float
-        Error of the weights themselves in units of round-off, relative to ``amplification``.
+    noise : (N,) array
+        Bound on the error of each weight, in units of round-off: absolute, because a small weight that came out of
+        the cancellation of large terms carries their error.
     conjugate_pairs : bool
         True when nodes and weights come in conjugate pairs, so that an integrand real on the real axis needs only
         the nodes of the upper half plane.
@@ -105,7 +106,7 @@ class Rule:
     nulls: NDArray[Any]
     groups: tuple[NullGroup, ...]
     amplification: float
-    noise: float = 4.0
+    noise: NDArray[np.float64]
     conjugate_pairs: bool = False
     parameters: tuple[tuple[str, Any], ...] = ()
 
@@ -130,6 +131,7 @@ class Rule:
             nodes=self.nodes[keep],
             weights=self.weights[keep] * factor,
             nulls=self.nulls[:, keep] * factor,
+            noise=self.noise[keep] * factor,
             conjugate_pairs=False,
         )
 

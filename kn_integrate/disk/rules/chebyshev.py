@@ -41,6 +41,8 @@ from .base import (
     symmetric_bend,
 )
 
+NOISE = 2.0  # rounding units that moments and phases are taken to be off
+
 
 def chebyshev_moments(y: PoleDistance, a: float, count: int) -> NDArray[Any]:
     """``M_k``, k < count (at least 3), for the interval [-a, 1]."""
@@ -92,12 +94,14 @@ def _overhang(y: PoleDistance, size: int, count: int, reach: float) -> Rule:
     coefficients = waves * (2.0 / count)
     coefficients[0] *= 0.5
     weights = moments[:count] @ coefficients
+    noise = NOISE * (np.abs(moments[:count]) @ np.abs(coefficients))
     # an error in coefficient k >= count costs |M_k| directly and |M_(2 count - k)| by aliasing
     scale = float(np.abs(moments[count - 3 : count + 3]).max()) * 2.0
     nulls = coefficients[[count - 1, count - 2, count - 3, count - 4]] * (scale / (1.0 - 1.0 / rho))
     x = 0.5 * (1.0 + a) * (waves[1] + 1.0) - a
     y1 = y.plus(1)
     t, weights = bent(x, weights, y1, bend)
+    noise = np.abs(bent(x, noise, y1, bend)[1]) + 4.0 * np.abs(weights)
     _, nulls = bent(x, nulls, y1, bend)
     return Rule(
         kind="overhang",
@@ -106,7 +110,7 @@ def _overhang(y: PoleDistance, size: int, count: int, reach: float) -> Rule:
         nulls=nulls,
         groups=(NullGroup(0, 1.0 / rho, 1.0),),
         amplification=float(np.abs(weights).sum()),
-        noise=4.0 + 4.0 * float(np.abs(moments[:count]).sum() / np.abs(weights).sum()),
+        noise=noise,
         parameters=(("nodes", count), ("reach", reach)),
     )
 
@@ -130,12 +134,14 @@ def _ellipse(y: PoleDistance, size: int, count: int, rho_e: float) -> Rule:
     scaled[middle] = 2.0 * fourier[middle] / (1.0 - rho_e ** (-count))
     tamed = moments[:count] * rho_e ** (-k.astype(float))
     weights = tamed @ scaled
+    noise = NOISE * (np.abs(tamed) @ np.abs(scaled))
     ratio = rho_e / rho
     scale = float((np.abs(tamed) * np.minimum(1.0, ratio) ** k).sum()) + float(abs(tamed[-1]))
     nulls = scaled[[count - 1, count - 2, count - 3, count - 4]] * (scale / max(1e-3, 1.0 - ratio))
     x = 0.5 + 0.25 * (rho_e * points + points.conj() / rho_e)
     y1 = y.plus(1)
     t, weights = bent(x, weights, y1, bend)
+    noise = np.abs(bent(x, noise, y1, bend)[1]) + 4.0 * np.abs(weights)
     _, nulls = bent(x, nulls, y1, bend)
     return Rule(
         kind="ellipse",
@@ -144,7 +150,7 @@ def _ellipse(y: PoleDistance, size: int, count: int, rho_e: float) -> Rule:
         nulls=nulls,
         groups=(NullGroup(0, ratio, 1.0),),
         amplification=float(np.abs(weights).sum()),
-        noise=4.0 + 4.0 * float(np.abs(tamed).sum() / np.abs(weights).sum()),
+        noise=noise,
         conjugate_pairs=y.is_real,
         parameters=(("nodes", count), ("rho", rho_e)),
     )

@@ -58,6 +58,7 @@ def contour_rule(y: PoleDistance, size: int, circle_count: int, segment_count: i
     fourier = circle_fourier(circle_count)  # F[k] = f_k radius^k
     power = radius**value
     circle_weights = power * ((1.0 / shifts) @ fourier)
+    circle_noise = 2.0 * abs(power) * ((1.0 / np.abs(shifts)) @ np.abs(fourier)) + 4.0 * np.abs(circle_weights)
     # what coefficient k >= circle_count does: it is aliased onto k - circle_count, whose factor is 1/(Y + k - count)
     decay = fraction ** np.arange(circle_count)
     scale = abs(power) * float((decay / np.abs(shifts)).sum())
@@ -93,6 +94,8 @@ def contour_rule(y: PoleDistance, size: int, circle_count: int, segment_count: i
             NullGroup(4, 1.0 / rho, segment_count + 1.0),
         ),
         amplification=float(np.abs(weights).sum()),
+        # t^Y on the segment is an exponential of Y log t, whose rounding grows with that product
+        noise=np.concatenate([circle_noise, (4.0 + 2.0 * abs(value) * np.abs(log_t)) * np.abs(segment_weights)]),
         conjugate_pairs=y.is_real,
         parameters=(("circle", circle_count), ("segment", segment_count), ("fraction", fraction)),
     )

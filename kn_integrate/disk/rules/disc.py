@@ -48,11 +48,13 @@ def disc_rule(y: PoleDistance, size: int, count: int, wide: bool = True) -> Rule
     shifts = y.shifts(count)
     fourier = circle_fourier(count)
     weights = (1.0 / shifts) @ fourier
+    noise = 2.0 * ((1.0 / np.abs(shifts)) @ np.abs(fourier))
     ratio = disc_decay(size, wide)
     # coefficient count + k is taken for coefficient k: the error is g_(count+k) (1/(Y+k) - 1/(Y+count+k))
     scale = float((ratio ** np.arange(count) / np.abs(shifts)).sum())
     y1 = y.plus(1)
     t, weights = bent(x, weights, y1, bend)
+    noise = np.abs(bent(x, noise, y1, bend)[1]) + 4.0 * np.abs(weights)
     _, nulls = bent(x, fourier[[-1, -2, -3, -4]] * scale, y1, bend)
     total = float(np.abs(weights).sum())
     return Rule(
@@ -62,6 +64,7 @@ def disc_rule(y: PoleDistance, size: int, count: int, wide: bool = True) -> Rule
         nulls=nulls,
         groups=(NullGroup(0, ratio, 1.0),),
         amplification=total,
+        noise=noise,
         conjugate_pairs=y.is_real,
         parameters=(("nodes", count), ("wide", wide)),
     )

@@ -35,7 +35,7 @@ def residue_rule(level: int, size: int, count: int, wide: bool = True) -> Rule:
     """
     if level == 0:
         nothing = np.zeros((4, 1))
-        return Rule("residue", np.zeros(1), np.ones(1), nothing, (NullGroup(0, 0.0, 1.0),), 1.0)
+        return Rule("residue", np.zeros(1), np.ones(1), nothing, (NullGroup(0, 0.0, 1.0),), 1.0, np.zeros(1))
     bend = disc_bend(size, wide)
     x, fourier = circle_points(count), circle_fourier(count)
     t, weights = bent(x, fourier[level], 1.0 - level, bend)
@@ -48,6 +48,7 @@ def residue_rule(level: int, size: int, count: int, wide: bool = True) -> Rule:
         nulls=nulls,
         groups=(NullGroup(0, disc_decay(size, wide), level + 1.0),),
         amplification=float(np.abs(weights).sum()),
+        noise=6.0 * np.abs(weights),
         conjugate_pairs=True,
         parameters=(("nodes", count), ("level", level), ("wide", wide)),
     )
