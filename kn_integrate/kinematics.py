@@ -17,7 +17,6 @@ from .channels import (
     Pair,
     canonical,
     dotted,
-    is_consecutive,
     pair_index,
     pair_order,
     planar_channels,
@@ -30,6 +29,7 @@ from .conservation import SLACK, completed
 from .errors import InputError
 from .exact import ZERO, Exact, read, read_integer
 from .momenta import momentum_products
+from .planar import pairs_of_planar, planar_key, row_difference
 
 STRINGS = ("open", "closed")
 
@@ -134,7 +134,7 @@ class Mandelstams:
         massless = not any(rows)
         found: dict[Channel, tuple[Exact, bool]] = {}
         for labels, raw in _items(channels, "channels"):
-            name = _planar_key(labels, n, order)
+            name = planar_key(labels, n, order)
             proper = canonical(name, order)
             if proper != name and not massless and 2 * len(name) != n:
                 raise InputError(
@@ -144,7 +144,7 @@ class Mandelstams:
                 )
             value, rounded = read(raw, f"X_{dotted(name)}")
             if proper != name and not massless:  # half of the legs: neither side is the complement of the other
-                value = value - _row_difference(name, proper, rows)
+                value = value - row_difference(name, proper, rows)
             if proper in found:
                 other, other_rounded = found[proper]
                 slack = SLACK * max(abs(value), abs(other)) if rounded or other_rounded else 0.0
@@ -159,7 +159,7 @@ class Mandelstams:
                 f"no value for {', '.join(map(dotted, missing))}",
                 f"all n(n-3)/2 = {n * (n - 3) // 2} planar channels of {dotted(order)}",
             )
-        return cls(n, _pairs_of_planar(n, order, {c: v for c, (v, _) in found.items()}, rows), rows, _string(string))
+        return cls(n, pairs_of_planar(n, order, {c: v for c, (v, _) in found.items()}, rows), rows, _string(string))
 
     @classmethod
     def from_chords(
@@ -182,7 +182,7 @@ class Mandelstams:
             proper = canonical(inside, order)
             value = read(raw, f"chord {labels!r}")[0]
             if proper != inside:
-                value = value - _row_difference(inside, proper, rows)
+                value = value - row_difference(inside, proper, rows)
             if channels.setdefault(proper, value) != value:
                 raise InputError(f"chord {labels!r}", f"{channels[proper]} and {value}", "one value")
         return cls.from_planar(n, channels, None, rows, string)
@@ -224,7 +224,7 @@ class Mandelstams:
         rows = tuple(2 * factor * m for m in mass_squares)
         channels: dict[Channel, Any] = {}
         for labels, raw in _items(squares, "squares"):
-            name = canonical(_planar_key(labels, n, order), order)
+            name = canonical(planar_key(labels, n, order), order)
             inside = sum((mass_squares[label - 1] for label in name), ZERO)
             value = factor * (read(raw, f"square of {dotted(name)}")[0] + inside)
             if channels.setdefault(name, value) != value:
@@ -443,67 +443,6 @@ def _coupling(alpha_prime: Any, string: Any) -> Exact:
         raise InputError("string", repr(string), "'open' or 'closed'")
     scaled: Exact = 2 * value if string == "open" else value / 2
     return scaled
-
-
-def _planar_key(labels: Any, n: int, order: Channel) -> Channel:
-    name = tuple(sorted(read_labels(labels, n, f"channel {labels!r}")))
-    if not 2 <= len(name) <= n - 2:
-        raise InputError(f"channel {dotted(name)}", f"{len(name)} labels", f"between 2 and {n - 2} labels")
-    if not is_consecutive(frozenset(name), order):
-        expected = f"labels that are neighbours in the ordering {dotted(order)}"
-        if len(name) == 2:
-            i, j = name
-            expected += (
-                f" (a channel is named by all its labels: for the pair invariant s_{i}{j} use from_pairs; "
-                f"for the chord X_{i},{j} of the polygon give ({dotted(range(i, j))}) here, or use from_chords)"
-            )
-        raise InputError(f"channel {dotted(name)}", "labels that are not neighbours", expected)
-    return name
-
-
-def _row_difference(inside: Iterable[int], outside: Iterable[int], rows: Sequence[Exact]) -> Exact:
-    """X of a channel less X of its complement: half the difference of their row sums."""
-    left = sum((rows[label - 1] for label in inside), ZERO)
-    right = sum((rows[label - 1] for label in outside), ZERO)
-    difference: Exact = (left - right) / 2
-    return difference
-
-
-def _pairs_of_planar(
-    n: int, order: Channel, channels: Mapping[Channel, Exact], rows: Sequence[Exact]
-) -> tuple[Exact, ...]:
-    """All pairs from the planar invariants: second differences, then conservation for the last leg."""
-    everything = frozenset(order)
-
-    def run(first: int, last: int) -> Exact:
-        # X of positions first..last, 0-based, not containing the last position of the ordering
-        if last <= first:
-            return ZERO
-        inside = order[first : last + 1]
-        outside = everything.difference(inside)
-        proper = canonical(inside, order)
-        if len(outside) == 1:
-            return _row_difference(inside, outside, rows)
-        value = channels[proper]
-        return value if proper == tuple(sorted(inside)) else value + _row_difference(inside, outside, rows)
-
-    known = {(a, b): run(a, b) for a in range(n - 1) for b in range(a, n - 1)}
-    index = pair_index(n)
-    values = [ZERO] * len(pair_order(n))
-    last_leg = order[-1]
-    for a in range(n - 1):
-        rest = rows[order[a] - 1]
-        for b in range(n - 1):
-            if a == b:
-                continue
-            low, high = min(a, b), max(a, b)
-            k = index[order[low], order[high]]
-            if b > a:
-                value = known[a, b] - known[a + 1, b] - known[a, b - 1]
-                values[k] = value + known[a + 1, b - 1] if b - a > 1 else value
-            rest = rest - values[k]
-        values[index[order[a], last_leg]] = rest
-    return tuple(values)
 
 
 def _generator(rng: Any) -> Any:
