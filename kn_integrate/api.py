@@ -28,6 +28,7 @@ def disk_integral(
     method: str = "auto",
     max_points: float | None = None,
     threads: int = 1,
+    rule: str | None = None,
 ) -> Estimate:
     """The ordered disk integral ``Z_P(f)``, continued to any kinematics.
 
@@ -55,6 +56,9 @@ def disk_integral(
         Integrand evaluations that may be spent.
     threads
         Python threads for quadrature; the bits of the result do not depend on it.
+    rule
+        With ``method="quadrature"``: this family of rules for every chord, for a second opinion: ``"contour"``,
+        ``"ellipse"``, ``"disc"``, ``"small disc"``, ``"overhang"``, or ``"radau"`` (Re Y > -1).
 
     Returns
     -------
@@ -79,7 +83,9 @@ def disk_integral(
     >>> print(f"{kn.disk_integral(kin, kn.parke_taylor(1, 2, 3, 4)).value:.10f}")  # B(1/2, 1/2) = pi
     3.1415926536
     """
-    request = make_request(rtol=rtol, atol=atol, digits=digits, method=method, max_points=max_points, threads=threads)
+    request = make_request(
+        rtol=rtol, atol=atol, digits=digits, method=method, max_points=max_points, threads=threads, rule=rule
+    )
     family = disk_family(kin, f, ordering)
     return integrate_family(
         family.n, family.terms_at, request, invariants=family.invariants, name=family.name, varying=family.varying

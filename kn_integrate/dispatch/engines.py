@@ -71,7 +71,13 @@ def _quadrature(n: int, terms: Sequence[Term], request: Request) -> Estimate:
             n, terms, rtol=request.rtol, atol=request.atol, digits=request.digits, max_points=request.max_points
         )
     return integrate_terms(
-        n, terms, rtol=request.rtol, atol=request.atol, max_points=request.max_points, threads=request.threads
+        n,
+        terms,
+        rtol=request.rtol,
+        atol=request.atol,
+        max_points=request.max_points,
+        threads=request.threads,
+        family=request.rule,
     )
 
 

@@ -12,6 +12,7 @@ from ..exact import read, read_integer
 
 DEFAULT_RTOL = 1e-10
 MAX_DIGITS = 10_000
+RULES = ("radau", "overhang", "ellipse", "disc", "small disc", "contour")
 
 
 @dataclass(frozen=True)
@@ -28,6 +29,8 @@ class Request:
     max_points : float | None
         Limit on integrand evaluations.
     threads : int
+    rule : str | None
+        One family of quadrature rules for every chord; None chooses chord by chord.
     """
 
     rtol: float
@@ -36,6 +39,7 @@ class Request:
     method: str
     max_points: float | None
     threads: int
+    rule: str | None = None
 
 
 def make_request(
@@ -46,6 +50,7 @@ def make_request(
     method: Any = "auto",
     max_points: Any = None,
     threads: Any = 1,
+    rule: Any = None,
     methods: Sequence[str] = ("auto", "quadrature", "kz"),
 ) -> Request:
     """Validate a request; ``rtol=None`` means 1e-10 in double precision and ``10^-digits`` with digits.
@@ -86,7 +91,12 @@ def make_request(
     threads = read_integer(threads, "threads", "a positive integer")
     if threads < 1:
         raise InputError("threads", threads, "a positive integer")
-    return Request(rtol, atol, digits, method, max_points, threads)
+    if rule is not None:
+        if rule not in RULES:
+            raise InputError("rule", repr(rule), "one of " + ", ".join(repr(name) for name in RULES))
+        if method != "quadrature" or digits is not None:
+            raise InputError("rule", repr(rule), "it with method='quadrature' in double precision only")
+    return Request(rtol, atol, digits, method, max_points, threads, rule)
 
 
 def _real(value: Any, field: str, expected: str) -> float:

@@ -286,7 +286,8 @@ def _escalated(
         error = (difference + 10.0 ** -min(rough, 300.0) * size) * (scale if linear else 1.0)
         if (linear and error <= max(atol, rtol * size)) or working > MAX_WORKING_DIGITS:
             break
-        if digits is None and working > MAX_FOR_DOUBLE[points[0][1].n > 7]:  # a zero, for all that a double can tell
+        enough = MAX_FOR_DOUBLE[points[0][1].n > 7] if digits is None else 3 * digits + MAX_FOR_DOUBLE[1]
+        if working > enough:  # a zero, for all that these digits can tell
             break
         if error <= atol:  # a zero: the values themselves are below what was asked
             break
