@@ -43,6 +43,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
     "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
+    "plots.complex_plane": ("ComplexPlane", "complex_plane"),
     "plots.energy_line": ("EnergyLine", "energy_line"),
     "plots.error_budget": ("ErrorBudget", "error_budget"),
     "plots.pole_map": ("PoleMap", "pole_map"),
@@ -81,6 +82,7 @@ if TYPE_CHECKING:
     from .kz.matrices import Matrix, f_matrix, z_matrix
     from .momenta import random_momenta
     from .momentum_kernel import biadjoint, inverse_klt, klt_kernel
+    from .plots.complex_plane import ComplexPlane, complex_plane
     from .plots.energy_line import EnergyLine, energy_line
     from .plots.error_budget import ErrorBudget, error_budget
     from .plots.pole_map import PoleMap, pole_map
@@ -91,6 +93,7 @@ if TYPE_CHECKING:
 
 __all__ = [
     "AlphaSeries",
+    "ComplexPlane",
     "Convergence",
     "DiskExponents",
     "DiskIntegral",
@@ -125,6 +128,7 @@ __all__ = [
     "closed_amplitude",
     "closed_superstring_amplitude",
     "closed_tachyon",
+    "complex_plane",
     "converge",
     "disk_integral",
     "energy_line",

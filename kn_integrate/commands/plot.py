@@ -13,7 +13,7 @@ from ..report.outcome import Outcome, json_text
 from ._points import GRID, ON, RIGHT, spec_of
 from ._verb import verb
 
-KINDS = ("energy-line", "pole-map", "error-budget")
+KINDS = ("energy-line", "pole-map", "error-budget", "complex-plane")
 KIND = Field("plot", "kind", inputs.choice(*KINDS), "|".join(KINDS), "Which figure.")
 STORE = Field("plot", "store", inputs.text, "FILE", "energy-line: the results of a scan.")
 AXIS = Field("plot", "axis", inputs.text, "T|1.2", "energy-line: coordinate or channel on the axis [the first].")
@@ -25,6 +25,7 @@ DATA = Field("plot", "data", inputs.text, "FILE", "Write what the figure shows a
 WINDOW = Field(
     "plot", "window", GRID.read, "1.2=A:B:2,..", "pole-map: two channels, each with its first and last value."
 )
+HELD = Field("plot", "held", inputs.text, "Z[,Z]", "complex-plane: places of z3, z4, ... such as 0.3+0.8j.")
 _ACCURACY = tuple(field for field in accuracy("auto", "quadrature", "kz") if field.key != "threads")
 _FOR_POINTS = (*KINEMATICS, INTEGRAND, RIGHT, ORDERING, ON, *_ACCURACY)
 
@@ -34,7 +35,7 @@ def _explain(job: Job) -> dict[str, Any]:
     return {"kind": job.get(KIND), "figure": job.get(OUT), "data": job.get(DATA)}
 
 
-@verb(KIND, STORE, AXIS, PART, WINDOW, OUT, DATA, *_FOR_POINTS, explain=_explain)
+@verb(KIND, STORE, AXIS, PART, WINDOW, HELD, OUT, DATA, *_FOR_POINTS, explain=_explain)
 def plot(job: Job) -> Outcome:
     """A figure, and its data.
 
@@ -43,6 +44,7 @@ def plot(job: Job) -> Outcome:
       kn-integrate plot --kind energy-line --store a.sqlite --out a.pdf
       kn-integrate plot --kind pole-map --planar 1.2=1,2.3=1 --window 1.2=-2:1:2,2.3=-2:1:2 \\
         --integrand "PT(1,2,3,4)" --out poles.png
+      kn-integrate plot --kind complex-plane --planar 1.2=1/3,2.3=1/5 --integrand "PT(1,2,3,4)" --out plane.png
       kn-integrate plot --kind error-budget --planar 1.2=1/3,2.3=1/5 --integrand "PT(1,2,3,4)" --out errors.svg
     """
     kind = job.get(KIND)
@@ -56,7 +58,12 @@ def plot(job: Job) -> Outcome:
 
         check_target(out)
     _only_with(job, kind)
-    figure = {"energy-line": _energy_line, "pole-map": _pole_map, "error-budget": _error_budget}[kind](job)
+    figure = {
+        "energy-line": _energy_line,
+        "pole-map": _pole_map,
+        "error-budget": _error_budget,
+        "complex-plane": _plane,
+    }[kind](job)
     document: Mapping[str, Any] = figure.to_dict()
     files = {"figure": out, "data": data}
     if out is not None:
@@ -76,8 +83,9 @@ def _only_with(job: Job, kind: str) -> None:
         "energy-line": (STORE, AXIS, PART),
         "pole-map": (WINDOW, *KINEMATICS, INTEGRAND, RIGHT, ORDERING, ON),
         "error-budget": (*KINEMATICS, INTEGRAND, ORDERING, *_ACCURACY),
+        "complex-plane": (*KINEMATICS, INTEGRAND, RIGHT, HELD),
     }[kind]
-    for field in (STORE, AXIS, PART, WINDOW, *_FOR_POINTS):
+    for field in (STORE, AXIS, PART, WINDOW, HELD, *_FOR_POINTS):
         if job.get(field) is not None and field not in wanted:
             raise InputError(job.name(field), f"it with --kind {kind}", "only what that figure uses")
 
@@ -113,6 +121,13 @@ def _error_budget(job: Job) -> Any:
     point, integrand = point_of(job), integrand_of(job)
     result = disk_integral(point, integrand, ordering=job.get(ORDERING), **job.table("accuracy"))
     return error_budget({result.method: result})
+
+
+def _plane(job: Job) -> Any:
+    from ..plots.complex_plane import complex_plane
+
+    held = [] if job.get(HELD) is None else [part.strip() for part in job.get(HELD).split(",")]
+    return complex_plane(point_of(job), integrand_of(job), job.get(RIGHT), held=held)
 
 
 command = plot
