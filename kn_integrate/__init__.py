@@ -39,6 +39,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "momentum_kernel": ("biadjoint", "inverse_klt", "klt_kernel"),
     "sphere.evaluate": ("sphere_integral",),
     "kz.matrices": ("Matrix", "f_matrix", "z_matrix"),
+    "checks.cross_check": ("CrossCheck", "cross_check"),
     "checks.examine": ("Examination", "examine_formula"),
     "api": ("disk_integral", "residue"),
     "convergence": ("Convergence", "converge"),
@@ -70,6 +71,7 @@ if TYPE_CHECKING:
         yang_mills_amplitude,
     )
     from .api import disk_integral, residue
+    from .checks.cross_check import CrossCheck, cross_check
     from .checks.examine import Examination, examine_formula
     from .convergence import Convergence, converge
     from .errors import InputError, KNError, NotAvailableError, PoleError, Status, WorkLimitError
@@ -95,6 +97,7 @@ __all__ = [
     "AlphaSeries",
     "ComplexPlane",
     "Convergence",
+    "CrossCheck",
     "DiskExponents",
     "DiskIntegral",
     "EnergyLine",
@@ -130,6 +133,7 @@ __all__ = [
     "closed_tachyon",
     "complex_plane",
     "converge",
+    "cross_check",
     "disk_integral",
     "energy_line",
     "error_budget",

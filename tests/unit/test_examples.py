@@ -38,3 +38,8 @@ def test_the_cluster_prints_what_is_recorded(monkeypatch, capsys):
     pytest.importorskip("distributed")
     run("cluster_scan", monkeypatch)
     assert capsys.readouterr().out == (EXAMPLES / "recorded" / "cluster_scan.txt").read_text()
+
+
+def test_the_trusted_value_prints_what_is_recorded(monkeypatch, capsys):
+    run("trust_a_value", monkeypatch)
+    assert capsys.readouterr().out == (EXAMPLES / "recorded" / "trust_a_value.txt").read_text()
