@@ -1,8 +1,8 @@
 """A number without a closed form, and every independent reason to believe it.
 
 An invented referee doubts one entry of a table: the six-point integral Z_123456(PT(1,3,2,5,4,6)) at a point two
-channels past their first poles.  Nobody has a formula for it.  This script computes it by engines that share no code, by
-rules that continue in different ways, and by relations that express it through other integrals.
+channels past their first poles.  Nobody has a formula for it.  This script computes it by engines that share no code,
+by rules that continue in different ways, and by relations that express it through other integrals.
 
     python examples/trust_a_value.py
 """
