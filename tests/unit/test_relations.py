@@ -102,6 +102,27 @@ def test_field_theory_and_soft_limits():
     assert r.soft_limit(hard, ("1/3", "-1/4", "1/7"), kn.disk_integral).holds
 
 
+@pytest.mark.parametrize("engine", ENGINES)
+@pytest.mark.parametrize("n", [4, 5, 6])
+def test_first_massive_level(n, engine):
+    found = r.first_massive_level(kn.Mandelstams.random(n, 40 + n, low=0, high=1), ENGINES[engine])
+    assert found.holds
+    assert found.error < 1e-6 * abs(found.left)
+
+
+@pytest.mark.parametrize("n", [4, 5, 6])
+def test_inverse_kernel_and_bilinear(n):
+    kin = kn.Mandelstams.random(n, 5, low=0, high=1)
+    found = r.inverse_kernel(kin)
+    assert found.holds
+    assert found.error < 1e-9
+    if n < 6:
+        direct = partial(kn.sphere_integral, method="direct", rtol=1e-6)
+        bilinear = partial(kn.sphere_integral, method="klt")
+        sphere = r.klt(kin, pt(n), kn.parke_taylor(*range(1, n + 1)), direct, bilinear)
+        assert sphere.holds
+
+
 def test_bad_input():
     kin = kn.Mandelstams.random(5, 9)
     _, exponents = single_term(kin, pt(5), None)
