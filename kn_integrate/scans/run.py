@@ -132,7 +132,7 @@ def scan(
                     _enter(target, counter, [(position, evaluate_point(task, point.kinematics, evaluate))])
             elif executor is None:
                 with _own_processes(min(count, len(todo))) as pool:
-                    _Run(pool, target, counter, task, evaluate).go(todo, _AHEAD * count)
+                    _Run(pool, target, counter, task, evaluate, ours=True).go(todo, _AHEAD * count)
             else:
                 known = getattr(executor, "_max_workers", None) or _UNKNOWN_WORKERS
                 _Run(executor, target, counter, task, evaluate).go(todo, _AHEAD * known)
@@ -172,7 +172,18 @@ class _Run:
     its memory, say); such a point is handed out again, a few times.
     """
 
-    def __init__(self, executor: Executor, target: Store, counter: Progress, task: Task, evaluate: Evaluate) -> None:
+    def __init__(
+        self,
+        executor: Executor,
+        target: Store,
+        counter: Progress,
+        task: Task,
+        evaluate: Evaluate,
+        ours: bool = False,
+    ) -> None:
+        # Points in our own pool end with its processes.  Cancelling them too would race with the thread of the pool,
+        # which marks the points of dead processes and does not expect cancelled ones among them (Python 3.11).
+        self.ours = ours
         self.executor, self.target, self.counter, self.task, self.evaluate = executor, target, counter, task, evaluate
         self.running: dict[Future[Record | _Failure], tuple[int, ScanPoint]] = {}
         self.lost: dict[int, int] = {}
@@ -189,8 +200,9 @@ class _Run:
                 done, _ = wait(self.running, return_when=FIRST_COMPLETED)
                 self._collect(done)
         except BaseException as error:
-            for future in self.running:
-                future.cancel()
+            if not self.ours:
+                for future in self.running:
+                    future.cancel()
             if isinstance(error, StoreError):
                 raise  # nothing more can be written
             finished = [f for f in self.running if f.done() and not f.cancelled() and f.exception() is None]
