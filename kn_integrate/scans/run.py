@@ -200,7 +200,7 @@ class _Run:
                 done, _ = wait(self.running, return_when=FIRST_COMPLETED)
                 self._collect(done)
         except BaseException as error:
-            if not self.ours:
+            if not (self.ours or isinstance(error, BrokenExecutor)):
                 for future in self.running:
                     future.cancel()
             if isinstance(error, StoreError):
