@@ -16,7 +16,7 @@ from .plan import MAX_NODES, Choice, amplification, initial_choices, layout_of, 
 from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
-SAFETY = 12.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
+SAFETY = 20.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
 CALIBRATED = 8.0  # chord exponents up to this size have been compared with known values
 MAX_EXPONENT = 120.0  # above this a double-precision integrand overflows or loses everything
 MAX_PASSES = 12
@@ -88,7 +88,7 @@ PROBE_DIGITS = 4.0
 MAX_STEPS = 12  # growth of one rule from one pass to the next
 # Above this many points a plan is made from what a cheaper pass with this share of the digits shows.
 SCOUTED_POINTS, SCOUT_SHARE = 5e5, 0.55
-SIGMAS = 6.0
+SIGMAS = 9.0
 
 
 def _likely_roundoff(data: ChordData, outcome: Outcome) -> float:

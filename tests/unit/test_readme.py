@@ -37,7 +37,7 @@ def test_python_snippets_run_in_order(capsys):
     for snippet in snippets:
         exec(compile(snippet, "README.md", "exec"), namespace)
     printed = capsys.readouterr().out
-    assert printed.startswith("25.91492207393 +- 3e-11")
+    assert printed.startswith("25.91492207393 +- 5e-11")
     assert "(1, 2) 1 -1" in printed
 
 
