@@ -16,7 +16,7 @@ from .plan import MAX_NODES, Choice, amplification, initial_choices, layout_of, 
 from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
-SAFETY = 20.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
+SAFETY = 12.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
 CALIBRATED = 8.0  # chord exponents up to this size have been compared with known values
 MAX_EXPONENT = 120.0  # above this a double-precision integrand overflows or loses everything
 MAX_PASSES = 12

@@ -129,7 +129,7 @@ def _spread(count: int, threads: int, work: Any) -> None:
             future.result()
 
 
-def _table_arguments(table: SectorTable, variables: NDArray[np.int32]) -> tuple[Any, ...]:
+def _table_arguments(table: SectorTable, variables: NDArray[np.int32], split: bool) -> tuple[Any, ...]:
     return (
         variables,
         table.masks_prev,
@@ -137,6 +137,7 @@ def _table_arguments(table: SectorTable, variables: NDArray[np.int32]) -> tuple[
         table.mask_count,
         table.run_index,
         table.run_bounds,
+        *((table.run_split,) if split else ()),
         table.term_start,
         table.term_mask,
         table.term_class,
@@ -154,13 +155,15 @@ def _pack(rules: Sequence[Rule], width: int, dtype: type) -> tuple[NDArray[Any],
     return nodes, weights
 
 
-def _extrapolate(rule: Rule, rows: NDArray[np.float64]) -> tuple[float, float]:
+def _extrapolate(rule: Rule, rows: NDArray[np.float64], order: float) -> tuple[float, float]:
     """Error of a rule from the moduli of its null functionals, and the decay ratio used.
 
-    The ratio of coefficients is the theoretical one of the nearest singularity or the measured one, whichever is
-    slower; ratios are taken two apart because singularities on both sides of the interval make coefficients
-    alternate.  The error is the envelope of the last four coefficients at that ratio, carried on to the first degree
-    the rule gets wrong: coefficients of oscillating integrands are now and then small by accident.
+    Each of the last four coefficients is carried on to the first degree K that the rule gets wrong, and the largest
+    result counts: coefficients of oscillating integrands are now and then small by accident.  Carried on at the
+    measured ratio, or at the theoretical one of the nearest singularity, whichever is slower; measured ratios are taken
+    two apart because singularities on both sides of the interval make coefficients alternate.  At a singularity
+    ``(1 + c t)^-e`` coefficients go like ``k^(e-1) rho^-k``, so the theoretical decay from k to K has the factor
+    ``(K/k)^order``: few coefficients may not show it yet.
     """
     total, slowest = 0.0, 0.0
     for group in rule.groups:
@@ -171,9 +174,30 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64]) -> tuple[float, float]:
         if n4 > 0:
             ratio = max(ratio, math.sqrt(n2 / n4))
         ratio = min(ratio, 1.0)
-        total += max(n1, n2 * ratio, n3 * ratio**2, n4 * ratio**3) * ratio**group.steps
+        worst = 0.0
+        for z, size in enumerate((n1, n2, n3, n4)):
+            carried = ratio ** (z + group.steps)
+            if order > 0 and group.degree > z:
+                powers = ((group.degree + group.steps) / (group.degree - z)) ** order
+                carried = max(carried, min(1.0, group.ratio ** (z + group.steps) * powers))
+            worst = max(worst, size * carried)
+        total += worst
         slowest = max(slowest, ratio)
     return total, slowest
+
+
+def singular_order(data: ChordData) -> NDArray[np.float64]:
+    """For every chord the order of the singularity that deep chords beside it can cause in its variable.
+
+    Integrating ``t_2^(Y_2 - 1) (1 + t_1 + t_2)^A`` over ``t_2`` from 0 leaves ``(1 + t_1)^(A + Y_2)``: with Re Y_2 < 0
+    worse than what was there.  The largest sum of depths of the other chords over the sectors that have the chord.
+    """
+    variables = sector_table(data.n).variables
+    depth = np.array([max(0.0, -y.real) for y in data.chords])
+    own = depth[variables]
+    orders = np.zeros(len(depth))
+    np.maximum.at(orders, variables, own.sum(axis=1, keepdims=True) - own)
+    return orders
 
 
 def run(data: ChordData, layout: Layout, threads: int = 1) -> Outcome:
@@ -228,7 +252,7 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
         out_marginal = np.zeros((len(chunks), table.variables.shape[1], width), dtype=dtype)
         out_least = np.full(len(chunks), math.inf)
         exponents = data.run_exponents.astype(dtype)
-        arguments = (chunks, *_table_arguments(table, variables), exponents, all_counts, nodes, weights)
+        arguments = (chunks, *_table_arguments(table, variables, not is_complex), exponents, all_counts, nodes, weights)
         outputs: tuple[Any, ...] = (out_abs, out_square, out_marginal)
         if is_complex:
             from ..kernels.disk_complex import integrate_chunks as kernel
@@ -261,8 +285,9 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
 
     truncation = np.zeros(table.chord_count)
     decay = np.zeros(table.chord_count)
+    orders = singular_order(data)
     for k, (c, rule) in enumerate(zip(layout.chord.tolist(), rules, strict=True)):
-        error, ratio = _extrapolate(rule, null_sums[k])
+        error, ratio = _extrapolate(rule, null_sums[k], float(orders[c]))
         truncation[c] += error
         decay[c] = max(decay[c], ratio)
     total = complex(total)

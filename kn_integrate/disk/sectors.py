@@ -143,6 +143,8 @@ class SectorTable:
         The runs of at least two gaps, sorted by how they depend on the inner pair.
     run_bounds : (S, 5) int32
         Where the four kinds (constant, i only, j only, both) start and the last ends in ``run_index``.
+    run_split : (S, 4) int32
+        Within each kind, where the runs start that depend on the last outer variable; the others stand first.
     term_start : (S, R + 1) int32
     term_mask, term_class : (S, T) int32
         The terms of each run: which monomial, times 1, t_i, t_j or t_i t_j (class 0..3).
@@ -160,6 +162,7 @@ class SectorTable:
     mask_count: NDArray[np.int32]
     run_index: NDArray[np.int32]
     run_bounds: NDArray[np.int32]
+    run_split: NDArray[np.int32]
     term_start: NDArray[np.int32]
     term_mask: NDArray[np.int32]
     term_class: NDArray[np.int32]
@@ -200,6 +203,24 @@ def _choose_pair(m: int, tree: Tree, terms: dict[Run, list[tuple[int, ...]]]) ->
     return min(combinations(variables, 2), key=cost)
 
 
+def _outer_order(outer: list[int], pair: tuple[int, ...], terms: dict[Run, list[tuple[int, ...]]]) -> list[int]:
+    """The outer variables with that one last on which the fewest runs of one inner variable depend.
+
+    It runs fastest, and what does not depend on it is worked out once for all its nodes.
+    """
+
+    def cost(v: int) -> int:
+        return sum(
+            any(v in path for path in paths) and sum(any(u in path for path in paths) for u in pair) == 1
+            for paths in terms.values()
+        )
+
+    if not outer:
+        return outer
+    last = min(outer, key=cost)
+    return [v for v in outer if v != last] + [last]
+
+
 class _Masks:
     """The monomials of the outer variables a sector needs, each one built from an earlier one by one factor."""
 
@@ -226,26 +247,30 @@ def _sector_row(m: int, tree: Tree, index: dict[Run, int]) -> dict[str, list[int
     terms = {run: _run_terms(tree, run) for run in index if run[1] > run[0]}
     pair = _choose_pair(m, tree, terms)
     i, j = pair if len(pair) == 2 else (pair[0], -1)
-    outer = [v for v in range(m) if tree.parent[v] >= 0 and v not in pair]
+    outer = _outer_order([v for v in range(m) if tree.parent[v] >= 0 and v not in pair], pair, terms)
+    fastest = outer[-1] if outer else -1
     masks = _Masks({v: k for k, v in enumerate(outer)})
-    by_kind: list[list[tuple[int, list[tuple[int, int]]]]] = [[], [], [], []]
+    by_kind: list[list[tuple[bool, int, list[tuple[int, int]]]]] = [[], [], [], []]
     for run, paths in terms.items():
         encoded = [(masks.index(path), (1 if i in path else 0) + (2 if j in path else 0)) for path in paths]
         classes = {c for _, c in encoded}
         on_i, on_j = bool(classes & {1, 3}), bool(classes & {2, 3})
         kind = (BOTH if on_i else J_ONLY) if on_j else (I_ONLY if on_i else CONST)
-        by_kind[kind].append((index[run], encoded))
+        by_kind[kind].append((any(fastest in path for path in paths), index[run], encoded))
     row: dict[str, list[int]] = {
         "masks_prev": masks.prev,
         "masks_var": masks.var,
         "run_index": [],
         "run_bounds": [0],
+        "run_split": [],
         "term_start": [0],
         "term_mask": [],
         "term_class": [],
     }
     for members in by_kind:
-        for position, encoded in members:
+        members.sort(key=lambda member: member[0])
+        row["run_split"].append(len(row["run_index"]) + sum(not fast for fast, _, _ in members))
+        for _, position, encoded in members:
             row["run_index"].append(position)
             row["term_mask"] += [mask for mask, _ in encoded]
             row["term_class"] += [c for _, c in encoded]
@@ -282,7 +307,17 @@ def sector_table(n: int) -> SectorTable:
 
     counts = np.array([len(row["masks_prev"]) for row in rows], dtype=np.int32)
     counts.setflags(write=False)
-    names = ("variables", "masks_prev", "masks_var", "run_index", "run_bounds", "term_start", "term_mask", "term_class")
+    names = (
+        "variables",
+        "masks_prev",
+        "masks_var",
+        "run_index",
+        "run_bounds",
+        "run_split",
+        "term_start",
+        "term_mask",
+        "term_class",
+    )
     return SectorTable(
         n=n,
         m=m,

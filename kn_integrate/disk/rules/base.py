@@ -68,11 +68,14 @@ class NullGroup:
         Theoretical modulus of the ratio of successive coefficients.
     steps : float
         How many coefficients lie between the last computed one and the first that the rule gets wrong.
+    degree : int
+        Degree of the last computed coefficient; 0 where ``steps`` is so small that powers of the degree do not matter.
     """
 
     start: int
     ratio: float
     steps: float
+    degree: int = 0
 
 
 @dataclass(frozen=True)

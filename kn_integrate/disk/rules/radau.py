@@ -134,7 +134,7 @@ def radau_rule(y: PoleDistance, size: int, count: int) -> Rule:
         nodes=t,
         weights=weights,
         nulls=nulls,
-        groups=(NullGroup(0, 1.0 / rho, gauss + 1.0),),
+        groups=(NullGroup(0, 1.0 / rho, gauss + 1.0, gauss - 1),),
         amplification=float(np.abs(weights).sum()),
         noise=(4.0 + 2.0 * float(missed) / 2.0**-52) * np.abs(weights),
         parameters=(("nodes", count),),
