@@ -5,14 +5,17 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import cache
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..errors import NotAvailableError, WorkLimitError
 from ..exact import Exact
 from .chords import ChordData, chord_data
 from .plan import MAX_NODES, Choice, amplification, initial_choices, layout_of, plan_table, raised, thinned
+from .points import eligible, integrate_small
 from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
@@ -99,6 +102,14 @@ def _likely_roundoff(data: ChordData, outcome: Outcome) -> float:
     return _caution(data) * SIGMAS * EPSILON * (outcome.weight_noise + (4.0 + 0.5 * _spread(data)) * outcome.square)
 
 
+@cache
+def probe_signs(size: int, k: int) -> NDArray[np.float64]:
+    """Relative changes of ``size`` exponents, moduli in [1/2, 1]; fixed: the same input gives the same."""
+    generator = np.random.default_rng([20240229, k])
+    signs: NDArray[np.float64] = generator.uniform(0.5, 1.0, size) * generator.choice([-1.0, 1.0], size)
+    return signs
+
+
 def _exponent_rounding(data: ChordData, choices: Sequence[Choice], threads: int) -> tuple[float, int]:
     """What the rounding of exponents to double costs: an error that is smooth in all variables, so it is measured.
 
@@ -111,11 +122,9 @@ def _exponent_rounding(data: ChordData, choices: Sequence[Choice], threads: int)
     if not outcome.finite:
         layout = layout_of(data.n, choices)
         outcome = run(data, layout, threads)
-    generator = np.random.default_rng(20240229)  # fixed: the same input must give the same error
     largest, points = 0.0, outcome.points
-    size = len(data.run_exponents)
-    for _ in range(PROBES):
-        signs = generator.uniform(0.5, 1.0, size) * generator.choice([-1.0, 1.0], size)
+    for k in range(PROBES):
+        signs = probe_signs(len(data.run_exponents), k)
         shaken = replace(data, run_exponents=data.run_exponents * (1.0 + PROBE * signs))
         trial = run(shaken, layout, threads)
         points += trial.points
@@ -162,8 +171,12 @@ def integrate(
             f"quadrature in double precision takes exponents up to {MAX_EXPONENT:g} (found {largest:.3g}); "
             "use method='kz' or digits="
         )
-    caution = _caution(data)
     digits = min(-math.log10(max(rtol, 1e-15)), 15.0) if rtol > 0 else 15.0
+    if family is None and not residues and data.is_real:
+        small = _small(data, rtol, atol, digits, max_points)
+        if small is not None:
+            return small
+    caution = _caution(data)
     choices = initial_choices(data, digits, family, residues)
     best: _Pass | None = None
     spent = 0
@@ -222,6 +235,25 @@ def integrate(
         best, points = _settled(data, best, threads)
         spent += points
     return Integral(best.outcome.value, best.truncation, best.roundoff, spent, best.choices, best.attempt)
+
+
+def _small(data: ChordData, rtol: float, atol: float, digits: float, max_points: float) -> Integral | None:
+    """The result of the way for small integrals, where it serves and suffices."""
+    exponents = data.run_exponents.reshape(1, -1)
+    y = np.array([[chord.value for chord in data.chords]])
+    if not eligible(data.n, exponents, y)[0]:
+        return None
+    y1 = np.array([[chord.plus(1) for chord in data.chords]])
+    found = integrate_small(data.n, exponents, y, y1, rtol, atol, digits)
+    if not found.done[0] or found.points[0] > max_points:
+        return None
+    runs = runs_of(data.n - 2)
+    choices = tuple(
+        Choice(run, chord, run[1] - run[0] + 1, "radau", nodes, 0, "cheapest")
+        for run, chord, nodes in zip(runs[:-1], data.chords, found.counts[0].tolist(), strict=True)
+    )
+    truncation, roundoff = found.errors[0].tolist()
+    return Integral(found.value[0].item(), truncation, roundoff, int(found.points[0]), choices, int(found.passes[0]))
 
 
 @dataclass(frozen=True)

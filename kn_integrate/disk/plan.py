@@ -125,22 +125,30 @@ def amplification(y: PoleDistance, family: str) -> float:
     return 0.2 + 0.45 * depth
 
 
-def _growth(data: ChordData, index: int, t: np.ndarray[Any, Any]) -> np.ndarray[Any, Any]:
-    """log |F(t)| of a one-variable model of the integrand: all gaps equal, the cluster of one chord scaled by t."""
-    runs = runs_of(data.n - 2)
+def log_runs(n: int, index: int, t: np.ndarray[Any, Any]) -> np.ndarray[Any, Any]:
+    """log |P_run(t)|, shape (runs, len(t)), of a one-variable model of the integrand.
+
+    All gaps are equal, and the cluster of one chord is scaled by t; 0 for runs that do not meet it or lie inside.
+    """
+    runs = runs_of(n - 2)
     a, b = runs[index]
-    total = np.zeros(len(t))
-    exponents = data.run_exponents.real
+    found = np.zeros((len(runs), len(t)))
     for k, (c, d) in enumerate(runs):
         inside = min(b, d) - max(a, c) + 1
         if inside <= 0 or (c >= a and d <= b):
             continue
         outside = (d - c + 1) - inside
-        total += exponents[k] * np.log(np.abs(1.0 + (inside / outside) * t))
+        found[k] = np.log(np.abs(1.0 + (inside / outside) * t))
+    return found
+
+
+def _growth(data: ChordData, index: int, t: np.ndarray[Any, Any]) -> np.ndarray[Any, Any]:
+    """log |F(t)| of the model of :func:`log_runs`."""
+    total: np.ndarray[Any, Any] = data.run_exponents.real @ log_runs(data.n, index, t)
     return total
 
 
-_FRACTIONS = np.array([0.45, 0.55, 0.65, 0.75, 0.83, 0.9, 0.95, 0.98])
+FRACTIONS = np.array([0.45, 0.55, 0.65, 0.75, 0.83, 0.9, 0.95, 0.98])
 
 
 def first_count(data: ChordData, index: int, family: str, digits: float) -> tuple[int, int]:
@@ -161,7 +169,7 @@ def first_count(data: ChordData, index: int, family: str, digits: float) -> tupl
         bend, over, rho = overhang_bend(size, REACH)
     else:
         bend, over, rho = symmetric_bend(size), 0.0, ellipse_parameter(1.0 / symmetric_bend(size))
-    trial = rho**_FRACTIONS
+    trial = rho**FRACTIONS
     reach = 0.5 * (trial + 1.0 / trial)
     middle, half = 0.5 * (1.0 - over), 0.5 * (1.0 + over)
     x = np.concatenate([middle - half * reach, middle + half * reach, [0.0, 0.5, 1.0]])
@@ -181,7 +189,7 @@ def first_count(data: ChordData, index: int, family: str, digits: float) -> tupl
     if family == "disc":
         # the circle is |x| = 1 about 0; compare with the model on the real ends of larger circles
         bend = disc_bend(size, True)
-        radii = (1.0 / disc_decay(size, True)) ** _FRACTIONS
+        radii = (1.0 / disc_decay(size, True)) ** FRACTIONS
         x = np.concatenate([-radii, radii, [0.0, 0.5, 1.0]])
         stretch = 1.0 + bend - bend * x
         level = _growth(data, index, x / stretch) - (y.real + 1.0) * np.log(np.abs(stretch))
