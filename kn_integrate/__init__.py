@@ -42,6 +42,8 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "checks.cross_check": ("CrossCheck", "cross_check"),
     "checks.examine": ("Examination", "examine_formula"),
     "api": ("disk_integral", "residue"),
+    "batch": ("DiskBatch", "disk_batch"),
+    "planar_points": ("PlanarPoints",),
     "convergence": ("Convergence", "converge"),
     "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
     "plots.complex_plane": ("ComplexPlane", "complex_plane"),
@@ -71,6 +73,7 @@ if TYPE_CHECKING:
         yang_mills_amplitude,
     )
     from .api import disk_integral, residue
+    from .batch import DiskBatch, disk_batch
     from .checks.cross_check import CrossCheck, cross_check
     from .checks.examine import Examination, examine_formula
     from .convergence import Convergence, converge
@@ -84,6 +87,7 @@ if TYPE_CHECKING:
     from .kz.matrices import Matrix, f_matrix, z_matrix
     from .momenta import random_momenta
     from .momentum_kernel import biadjoint, inverse_klt, klt_kernel
+    from .planar_points import PlanarPoints
     from .plots.complex_plane import ComplexPlane, complex_plane
     from .plots.energy_line import EnergyLine, energy_line
     from .plots.error_budget import ErrorBudget, error_budget
@@ -98,6 +102,7 @@ __all__ = [
     "ComplexPlane",
     "Convergence",
     "CrossCheck",
+    "DiskBatch",
     "DiskExponents",
     "DiskIntegral",
     "EnergyLine",
@@ -112,6 +117,7 @@ __all__ = [
     "Mandelstams",
     "Matrix",
     "NotAvailableError",
+    "PlanarPoints",
     "PoleError",
     "PoleMap",
     "Scan",
@@ -134,6 +140,7 @@ __all__ = [
     "complex_plane",
     "converge",
     "cross_check",
+    "disk_batch",
     "disk_integral",
     "energy_line",
     "error_budget",

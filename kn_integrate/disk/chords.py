@@ -46,11 +46,12 @@ class ChordData:
 
 def exact_chords(n: int, pairs: tuple[Exact, ...]) -> dict[Run, Exact]:
     """The divisor exponent Y of every run but the full one."""
-    exponent = _run_exponents(n, pairs)
+    exponent = exact_runs(n, pairs)
     return _chords(n, exponent)
 
 
-def _run_exponents(n: int, pairs: tuple[Exact, ...]) -> dict[Run, Exact]:
+def exact_runs(n: int, pairs: tuple[Exact, ...]) -> dict[Run, Exact]:
+    """The exponent of every run: run (a, b) is the pair (a+1, b+2)."""
     m = n - 2
     exponent: dict[Run, Exact] = {}
     for a in range(m):
@@ -77,7 +78,7 @@ def _chords(n: int, exponent: dict[Run, Exact]) -> dict[Run, Exact]:
 
 def chord_data(n: int, pairs: tuple[Exact, ...]) -> ChordData:
     """Build :class:`ChordData` from pair exponents in the order (1,2), (1,3), ..., (n-1,n), rows -2."""
-    exponent = _run_exponents(n, pairs)
+    exponent = exact_runs(n, pairs)
     chords = tuple(PoleDistance(y) for y in _chords(n, exponent).values())
     numbers = [exponent[run].value() for run in runs_of(n - 2)]
     kind = complex if any(isinstance(x, complex) for x in numbers) else float

@@ -19,7 +19,7 @@ from .points import eligible, integrate_small
 from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
-SAFETY = 12.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
+SAFETY = 16.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
 CALIBRATED = 8.0  # chord exponents up to this size have been compared with known values
 MAX_EXPONENT = 120.0  # above this a double-precision integrand overflows or loses everything
 MAX_PASSES = 12

@@ -43,6 +43,8 @@ class SmallResults:
     points, passes : (P,) int64
     counts : (P, chords) int64
         Nodes of the rule of each chord.
+    sizes : (P, chords) float64
+        Sum of the moduli of its weights.
     """
 
     done: NDArray[np.bool_]
@@ -51,6 +53,7 @@ class SmallResults:
     points: NDArray[np.int64]
     passes: NDArray[np.int64]
     counts: NDArray[np.int64]
+    sizes: NDArray[np.float64]
 
 
 @cache
@@ -146,11 +149,11 @@ def integrate_small(
     done = np.zeros(count, dtype=np.uint8)
     value, errors = np.zeros(count), np.zeros((count, 2))
     points, passes = np.zeros(count, dtype=np.int64), np.zeros(count, dtype=np.int64)
-    counts = np.zeros((count, chords), dtype=np.int64)
+    counts, sizes = np.zeros((count, chords), dtype=np.int64), np.zeros((count, chords))
     goals = ((digits + 1.0) * math.log(10.0), (PROBE_DIGITS + 1.0) * math.log(10.0))
     most = min(MOST_POINTS, CHUNK * (LARGEST + 1) ** 2)
     arguments = (*_tables(n), exponents, y, y1, rtol, float(atol), *goals, SAFETY, SIGMAS, PROBE, float(most))
-    outputs = (value, errors, points, counts, passes, done)
+    outputs = (value, errors, points, counts, sizes, passes, done)
     if threads <= 1 or count < 2 * PIECES:
         integrate_points(0, count, *arguments, *outputs)
     else:
@@ -161,4 +164,4 @@ def integrate_small(
             ]
             for future in work:
                 future.result()
-    return SmallResults(done == 1, value, errors, points, passes, counts)
+    return SmallResults(done == 1, value, errors, points, passes, counts, sizes)

@@ -17,6 +17,7 @@ from .sectors import SectorTable, sector_table
 
 CHUNK = 2048  # outer points per chunk: fixed, so that the order of summation never depends on the thread count
 EPSILON = 2.0**-52
+SLOWEST = 0.999  # ratio of coefficients beyond which the sum of the rest is not looked at
 
 
 @dataclass(frozen=True)
@@ -163,7 +164,8 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64], order: float) -> tuple[f
     measured ratio, or at the theoretical one of the nearest singularity, whichever is slower; measured ratios are taken
     two apart because singularities on both sides of the interval make coefficients alternate.  At a singularity
     ``(1 + c t)^-e`` coefficients go like ``k^(e-1) rho^-k``, so the theoretical decay from k to K has the factor
-    ``(K/k)^order``: few coefficients may not show it yet.
+    ``(K/k)^order``: few coefficients may not show it yet.  The coefficients after K count too, which matters where they
+    hardly fall: a geometric series.
     """
     total, slowest = 0.0, 0.0
     for group in rule.groups:
@@ -181,7 +183,7 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64], order: float) -> tuple[f
                 powers = ((group.degree + group.steps) / (group.degree - z)) ** order
                 carried = max(carried, min(1.0, group.ratio ** (z + group.steps) * powers))
             worst = max(worst, size * carried)
-        total += worst
+        total += worst * max(1.0, 0.5 / (1.0 - min(ratio, SLOWEST)))
         slowest = max(slowest, ratio)
     return total, slowest
 

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import replace
 from typing import Any
 
+from ..disk.rows import quick_sum
 from ..disk.terms import Term, integrate_terms, predict
 from ..errors import NotAvailableError, Status, WorkLimitError
 from ..estimate import Estimate
@@ -87,6 +88,9 @@ def _auto(n: int, terms: Sequence[Term], request: Request) -> Estimate:
         return _noted(_kz(n, terms, request, escalate=True), reason)
     if n > MAX_KZ:
         return _noted(_quadrature(n, terms, request), f"n = {n} is beyond the series engine")
+    quick = quick_sum(n, terms, request.rtol, request.atol) if request.max_points is None else None
+    if quick is not None:
+        return _noted(quick, "a small integral without deep chords: quadrature in one compiled call")
     seconds = predict(n, terms, request.rtol)[1]
     what = f"predicted {seconds:.2g} s by quadrature"
     quadrature_first = seconds <= AT_ONCE

@@ -103,6 +103,7 @@ def _truncation(variables, counts, nulls, marginal, ratios, orders, sums, errors
             worst = max(worst, sums[c, z] * factor)
             carried *= ratio
             theory *= ratios[c]
+        worst *= max(1.0, 0.5 / (1.0 - min(ratio, 0.999)))
         errors[c] = worst
         decay[c] = ratio
         total += worst
@@ -185,6 +186,7 @@ def integrate_points(
     out_errors,
     out_points,
     out_counts,
+    out_sizes,
     out_passes,
     out_state,
 ):
@@ -213,7 +215,7 @@ def integrate_points(
     most_points : float
         Evaluations of one pass that a point may take here.
     out_value : (P,); out_errors : (P, 2) truncation and round-off; out_points : (P,); out_counts : (P, chords);
-    out_passes : (P,); out_state : (P,) uint8
+    out_sizes : (P, chords) sum of the moduli of the weights; out_passes : (P,); out_state : (P,) uint8
         Results; state 1 where the errors meet the request, 0 where the point is left to others.
     """
     chord_count = y.shape[1]
@@ -294,6 +296,11 @@ def integrate_points(
                 marginal,
             )
             spent += points
+            for c in range(chord_count):
+                size = 0.0
+                for w in range(counts[c]):
+                    size += abs(weights[c, w])
+                out_sizes[point, c] = size
             value = _value(variables, counts, weights, marginal)
             truncation = safety * _truncation(variables, counts, nulls, marginal, ratios, orders, sums, errors, decay)
             absolute = 0.0
