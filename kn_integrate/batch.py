@@ -157,6 +157,21 @@ def disk_batch(
     return columns.batch()
 
 
+def at_once(
+    points: Sequence[Mandelstams | DiskExponents],
+    f: Any = None,
+    *,
+    ordering: Sequence[int] | None = None,
+    rtol: float | None = None,
+    atol: float = 0,
+) -> tuple[NDArray[np.bool_], DiskBatch]:
+    """Only the points that compiled code can do: which they are, and a batch whose other rows hold nothing."""
+    request = make_request(rtol=rtol, atol=atol)
+    columns = _Columns(len(points), request)
+    done = _at_once(tuple(points), f, ordering, request, columns)
+    return done, columns.batch()
+
+
 def _at_once(
     points: PlanarPoints | tuple[Any, ...], f: Any, ordering: Any, request: Request, columns: _Columns
 ) -> NDArray[np.bool_]:

@@ -35,11 +35,12 @@ from ..progress import FACES, Progress
 from .points import ScanPoint, ScanPoints
 from .result import Scan, open_scan
 from .store import Store, StoreError
-from .task import Evaluate, Record, Task, evaluate_point, integrate, make_task
+from .task import Evaluate, Record, Task, evaluate_piece, evaluate_point, integrate, make_task, takes_pieces
 
 _AHEAD = 3  # points handed out per worker: enough to keep all busy, few enough to stop soon
 _LOSSES = 3  # times that an executor may lose the same point
 _UNKNOWN_WORKERS = 32  # for an executor that does not tell
+_PIECE = 64  # points computed in one call: milliseconds, which is what a killed process loses
 _QUIET = ("OK", "ZERO")  # statuses that progress does not count separately
 
 
@@ -128,8 +129,7 @@ def scan(
         asked = len(set(positions))
         with Progress("scan", asked, asked - len(todo), face) as counter:
             if executor is None and (count == 1 or len(todo) < 2):
-                for position, point in todo:
-                    _enter(target, counter, [(position, evaluate_point(task, point.kinematics, evaluate))])
+                _here(todo, target, counter, task, evaluate)
             elif executor is None:
                 with _own_processes(min(count, len(todo))) as pool:
                     _Run(pool, target, counter, task, evaluate, ours=True).go(todo, _AHEAD * count)
@@ -137,6 +137,22 @@ def scan(
                 known = getattr(executor, "_max_workers", None) or _UNKNOWN_WORKERS
                 _Run(executor, target, counter, task, evaluate).go(todo, _AHEAD * known)
     return open_scan(path)
+
+
+def _here(
+    todo: Sequence[tuple[int, ScanPoint]], target: Store, counter: Progress, task: Task, evaluate: Evaluate
+) -> None:
+    """All points in this process: those that compiled code does a piece at a time, the others one by one."""
+    size = _PIECE if takes_pieces(task, evaluate) else 1
+    for start in range(0, len(todo), size):
+        piece = todo[start : start + size]
+        records = evaluate_piece(task, [point.kinematics for _, point in piece]) if size > 1 else [None]
+        done = [(position, record) for (position, _), record in zip(piece, records, strict=True) if record is not None]
+        if done:
+            _enter(target, counter, done)
+        for (position, point), record in zip(piece, records, strict=True):
+            if record is None:
+                _enter(target, counter, [(position, evaluate_point(task, point.kinematics, evaluate))])
 
 
 def _enter(target: Store, counter: Progress, results: Sequence[tuple[int, Record]]) -> None:

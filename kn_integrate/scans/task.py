@@ -10,7 +10,7 @@ import hashlib
 import json
 import numbers
 import time
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import lru_cache
 from typing import Any, TypeAlias
@@ -196,6 +196,37 @@ def evaluate_point(task: Task, kinematics: Mapping[str, Any], evaluate: Evaluate
         real = imaginary = None  # half a number is none
     error_text = plain_number(found.error)
     return Record(real, imaginary, error_text, found.status.name, found.method, int(found.evaluations), "", seconds)
+
+
+def takes_pieces(task: Task, evaluate: Evaluate) -> bool:
+    """True when several points of a task can be computed in one call: disk integrals in double precision."""
+    fit = evaluate is integrate and task.integral["kind"] in ("disk", "exponents")
+    options = task.options
+    return fit and "digits" not in options and "max_points" not in options and options.get("method", "auto") != "kz"
+
+
+def evaluate_piece(task: Task, kinematics: Sequence[Mapping[str, Any]]) -> list[Record | None]:
+    """What compiled code can do of several points, the same as :func:`evaluate_point` does; None for the others."""
+    from ..batch import at_once
+    from ..report.plain import plain_number
+
+    start = time.perf_counter()
+    places = [place_of(each) for each in kinematics]
+    if any(isinstance(place, SphereExponents) for place in places):
+        return [None] * len(places)
+    spec = None if task.integral["kind"] == "exponents" else spec_of(canonical(task.integral))
+    tolerances = {name: task.options[name] for name in ("rtol", "atol") if name in task.options}
+    done, found = at_once(places, spec, **tolerances)  # type: ignore[arg-type]
+    each = (time.perf_counter() - start) / max(1, int(done.sum()))
+    records: list[Record | None] = []
+    for k in range(len(places)):
+        if not done[k]:
+            records.append(None)
+            continue
+        row = found.row(k)
+        value, error = plain_number(row["value"]), plain_number(row["error"])
+        records.append(Record(value, None, error, row["status"], row["method"], row["evaluations"], "", each))
+    return records
 
 
 def _no_number(status: str, note: str, seconds: float) -> Record:

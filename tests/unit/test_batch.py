@@ -160,3 +160,25 @@ def test_sums_are_correctly_rounded():
             int(c) * Fraction(x) for c, x in zip(coefficients[m], values[p], strict=True)
         )
         assert out[p, m] == float(exact)
+
+
+def test_a_scan_takes_pieces_and_stores_what_single_points_give(tmp_path):
+    import kn_integrate.scans.run as run
+    from kn_integrate.scans.task import evaluate_point, make_task
+
+    a = kn.Mandelstams.from_planar(5, dict.fromkeys([(1, 2), (2, 3), (3, 4), (4, 5), (1, 5)], "1/7"))
+    b = kn.Mandelstams.from_planar(5, dict.fromkeys([(1, 2), (2, 3), (3, 4), (4, 5), (1, 5)], "-9/7"))
+    points = kn.ScanPoints.line(a, b, 80)
+    whole = kn.scan(points, "PT(1,2,3,4,5)", store=tmp_path / "a.sqlite", progress=False)
+    task = make_task(points.points, "PT(1,2,3,4,5)", {})
+    assert run.takes_pieces(task, run.integrate)
+    spent = []
+    for row, point in zip(whole, points, strict=True):
+        alone = evaluate_point(task, point.kinematics)
+        assert (row.status, row.method, row.evaluations) == (alone.status, alone.method, alone.evaluations)
+        assert (row.value is None) == (alone.real is None)
+        if alone.real is not None:
+            assert row.value == float(alone.real)
+            assert row.error == float(alone.error)
+        spent.append(row.evaluations)
+    assert min(spent) < 500 < 3000 < max(spent)  # both ways were taken
