@@ -19,7 +19,9 @@ from .points import eligible, integrate_small
 from .run import EPSILON, Layout, Outcome, run
 from .sectors import runs_of
 
-SAFETY = 16.0  # on the extrapolated truncation error; the calibration campaign reports what it buys
+# Extrapolated truncation errors of the chords are multiplied by SHARED, the largest one by SHARED + SINGLE: that one is
+# much too small happens, that many are at once does not.  The calibration campaign reports what the factors buy.
+SHARED, SINGLE = 4.0, 12.0
 CALIBRATED = 8.0  # chord exponents up to this size have been compared with known values
 MAX_EXPONENT = 120.0  # above this a double-precision integrand overflows or loses everything
 MAX_PASSES = 12
@@ -60,6 +62,11 @@ class Integral:
     def plan(self) -> list[dict[str, Any]]:
         """The plan in plain values."""
         return plan_table(self.choices)
+
+
+def _bound_of(errors: NDArray[np.float64]) -> float:
+    """A bound on the truncation error from the extrapolated errors of the chords."""
+    return float(SHARED * errors.sum() + SINGLE * errors.max(initial=0.0))
 
 
 def _caution(data: ChordData) -> float:
@@ -210,7 +217,7 @@ def integrate(
             choices = further
             continue
         worst = _worst_roundoff(data, outcome)
-        truncation = caution * SAFETY * float(outcome.truncation.sum())
+        truncation = caution * _bound_of(outcome.truncation)
         target = max(atol, rtol * abs(outcome.value))
         likely = min(worst, _likely_roundoff(data, outcome))
         if worst <= 0.1 * target or (worst <= target and truncation + worst <= target):
@@ -277,7 +284,7 @@ def _settled(data: ChordData, current: _Pass, threads: int) -> tuple[_Pass, int]
 
 
 def _increments(current: _Pass, goal: float) -> dict[int, int]:
-    """How many steps each chord's rule should grow so that the errors, extrapolated, add up to at most ``goal``.
+    """How many steps each chord's rule should grow so that the bound, extrapolated, is at most ``goal``.
 
     Greedy: the next step goes to the chord that takes off most error for the points it adds.
     """
@@ -289,7 +296,7 @@ def _increments(current: _Pass, goal: float) -> dict[int, int]:
         rate = -math.log(min(max(float(current.outcome.decay[c]), 1e-9), 0.98))
         gain[c] = -math.expm1(-rate * (1.0 if choice.family == "overhang" else 2.0))
     active = (errors > 0) & (shares > 0)
-    while errors[active].sum() > goal and active.any():
+    while active.any() and _bound_of(errors[active]) > goal:
         c = int(np.where(active, errors * gain / np.maximum(shares, 1e-300), -1.0).argmax())
         errors[c] *= 1.0 - gain[c]
         steps[c] += 1
@@ -312,7 +319,7 @@ def _proposal(
         stronger = _raise_strongest(data, new, digits)
         if stronger != choices and layout_of(data.n, stronger).points <= affordable:
             new, improved = stronger, True
-    goal = 0.5 * max(target, current.roundoff) / SAFETY
+    goal = 0.6 * max(target, current.roundoff)
     for c, extra in _increments(current, goal / _caution(data)).items():
         if new[c].family == choices[c].family and choices[c].total + extra <= MAX_NODES:
             new[c] = choices[c].more(extra)

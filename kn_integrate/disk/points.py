@@ -143,7 +143,7 @@ def integrate_small(
         Python threads; the bits do not depend on it.
     """
     from ..kernels.disk_points import integrate_points
-    from .evaluate import PROBE, PROBE_DIGITS, SAFETY, SIGMAS
+    from .evaluate import PROBE, PROBE_DIGITS, SHARED, SIGMAS, SINGLE
 
     count, chords = y.shape
     done = np.zeros(count, dtype=np.uint8)
@@ -152,7 +152,7 @@ def integrate_small(
     counts, sizes = np.zeros((count, chords), dtype=np.int64), np.zeros((count, chords))
     goals = ((digits + 1.0) * math.log(10.0), (PROBE_DIGITS + 1.0) * math.log(10.0))
     most = min(MOST_POINTS, CHUNK * (LARGEST + 1) ** 2)
-    arguments = (*_tables(n), exponents, y, y1, rtol, float(atol), *goals, SAFETY, SIGMAS, PROBE, float(most))
+    arguments = (*_tables(n), exponents, y, y1, rtol, float(atol), *goals, SHARED, SINGLE, SIGMAS, PROBE, float(most))
     outputs = (value, errors, points, counts, sizes, passes, done)
     if threads <= 1 or count < 2 * PIECES:
         integrate_points(0, count, *arguments, *outputs)

@@ -18,6 +18,7 @@ from .sectors import SectorTable, sector_table
 CHUNK = 2048  # outer points per chunk: fixed, so that the order of summation never depends on the thread count
 EPSILON = 2.0**-52
 SLOWEST = 0.999  # ratio of coefficients beyond which the sum of the rest is not looked at
+NOISE = 64.0  # units of round-off below which a coefficient may be nothing else
 
 
 @dataclass(frozen=True)
@@ -130,7 +131,7 @@ def _spread(count: int, threads: int, work: Any) -> None:
             future.result()
 
 
-def _table_arguments(table: SectorTable, variables: NDArray[np.int32], split: bool) -> tuple[Any, ...]:
+def _table_arguments(table: SectorTable, variables: NDArray[np.int32]) -> tuple[Any, ...]:
     return (
         variables,
         table.masks_prev,
@@ -138,7 +139,7 @@ def _table_arguments(table: SectorTable, variables: NDArray[np.int32], split: bo
         table.mask_count,
         table.run_index,
         table.run_bounds,
-        *((table.run_split,) if split else ()),
+        table.run_split,
         table.term_start,
         table.term_mask,
         table.term_class,
@@ -156,7 +157,9 @@ def _pack(rules: Sequence[Rule], width: int, dtype: type) -> tuple[NDArray[Any],
     return nodes, weights
 
 
-def _extrapolate(rule: Rule, rows: NDArray[np.float64], order: float) -> tuple[float, float]:
+def _extrapolate(
+    rule: Rule, rows: NDArray[np.float64], sizes: NDArray[np.float64], order: float
+) -> tuple[float, float]:
     """Error of a rule from the moduli of its null functionals, and the decay ratio used.
 
     Each of the last four coefficients is carried on to the first degree K that the rule gets wrong, and the largest
@@ -165,7 +168,7 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64], order: float) -> tuple[f
     two apart because singularities on both sides of the interval make coefficients alternate.  At a singularity
     ``(1 + c t)^-e`` coefficients go like ``k^(e-1) rho^-k``, so the theoretical decay from k to K has the factor
     ``(K/k)^order``: few coefficients may not show it yet.  The coefficients after K count too, which matters where they
-    hardly fall: a geometric series.
+    hardly fall (a geometric series), unless what is seen is round-off: ``sizes`` are sums of moduli behind ``rows``.
     """
     total, slowest = 0.0, 0.0
     for group in rule.groups:
@@ -183,7 +186,9 @@ def _extrapolate(rule: Rule, rows: NDArray[np.float64], order: float) -> tuple[f
                 powers = ((group.degree + group.steps) / (group.degree - z)) ** order
                 carried = max(carried, min(1.0, group.ratio ** (z + group.steps) * powers))
             worst = max(worst, size * carried)
-        total += worst * max(1.0, 0.5 / (1.0 - min(ratio, SLOWEST)))
+        if max(n1, n2) > NOISE * EPSILON * float(sizes[group.start : group.start + 2].max()):
+            worst *= max(1.0, 0.5 / (1.0 - min(ratio, SLOWEST)))
+        total += worst
         slowest = max(slowest, ratio)
     return total, slowest
 
@@ -234,6 +239,7 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
     points = 0
     null_rows = max(rule.nulls.shape[0] for rule in rules)
     null_sums = np.zeros((len(rules), null_rows))
+    null_sizes = np.zeros((len(rules), null_rows))
     noise_sums = np.zeros((len(rules), width))
 
     for is_complex in (False, True):
@@ -254,7 +260,7 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
         out_marginal = np.zeros((len(chunks), table.variables.shape[1], width), dtype=dtype)
         out_least = np.full(len(chunks), math.inf)
         exponents = data.run_exponents.astype(dtype)
-        arguments = (chunks, *_table_arguments(table, variables, not is_complex), exponents, all_counts, nodes, weights)
+        arguments = (chunks, *_table_arguments(table, variables), exponents, all_counts, nodes, weights)
         outputs: tuple[Any, ...] = (out_abs, out_square, out_marginal)
         if is_complex:
             from ..kernels.disk_complex import integrate_chunks as kernel
@@ -284,12 +290,14 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
             terms, nulls = terms.real, nulls.real
         total += terms[:, 0].sum()
         np.add.at(null_sums, layout.rows[sectors], np.abs(nulls))
+        sizes = np.einsum("svzw,svw->svz", np.abs(null_table)[rows], np.abs(marginal))
+        np.add.at(null_sizes, layout.rows[sectors], sizes)
 
     truncation = np.zeros(table.chord_count)
     decay = np.zeros(table.chord_count)
     orders = singular_order(data)
     for k, (c, rule) in enumerate(zip(layout.chord.tolist(), rules, strict=True)):
-        error, ratio = _extrapolate(rule, null_sums[k], float(orders[c]))
+        error, ratio = _extrapolate(rule, null_sums[k], null_sizes[k], float(orders[c]))
         truncation[c] += error
         decay[c] = max(decay[c], ratio)
     total = complex(total)

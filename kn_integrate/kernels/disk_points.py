@@ -71,7 +71,7 @@ def _value(variables, counts, weights, marginal):
 
 
 @njit(**_JIT)
-def _truncation(variables, counts, nulls, marginal, ratios, orders, sums, errors, decay):
+def _truncation(variables, counts, nulls, marginal, ratios, orders, shared, single, sums, errors, decay):
     """Errors of the rules and decay of their coefficients, as ``disk.run`` extrapolates them."""
     sums[:] = 0.0
     for s in range(variables.shape[0]):
@@ -83,6 +83,7 @@ def _truncation(variables, counts, nulls, marginal, ratios, orders, sums, errors
                     part += nulls[c, z, w] * marginal[s, v, w]
                 sums[c, z] += abs(part)
     total = 0.0
+    largest = 0.0
     for c in range(counts.shape[0]):
         ratio = ratios[c]
         if sums[c, 2] > 0.0:
@@ -107,11 +108,12 @@ def _truncation(variables, counts, nulls, marginal, ratios, orders, sums, errors
         errors[c] = worst
         decay[c] = ratio
         total += worst
-    return total
+        largest = max(largest, worst)
+    return shared * total + single * largest
 
 
 @njit(**_JIT)
-def _grow(variables, counts, errors, decay, goal, most):
+def _grow(variables, counts, errors, decay, shared, single, goal, most):
     """More nodes, each to the chord that takes off most error for the points it adds; False when that is not enough."""
     chords = counts.shape[0]
     shares = np.zeros(chords)
@@ -129,15 +131,17 @@ def _grow(variables, counts, errors, decay, goal, most):
     grown = False
     for _ in range(16 * chords):
         total = 0.0
+        largest = 0.0
         best = -1
         most_off = 0.0
         for c in range(chords):
             total += left[c]
+            largest = max(largest, left[c])
             off = left[c] * gain[c] / shares[c]
             if off > most_off:
                 most_off = off
                 best = c
-        if not total > goal or best < 0:
+        if not shared * total + single * largest > goal or best < 0:
             break
         left[best] *= 1.0 - gain[best]
         counts[best] += 1
@@ -178,7 +182,8 @@ def integrate_points(
     atol,
     goal,
     probe_goal,
-    safety,
+    shared,
+    single,
     sigmas,
     probe,
     most_points,
@@ -210,7 +215,7 @@ def integrate_points(
         See ``kernels.radau``.
     exponents : (P, runs), y, y1 : (P, chords) float64
         The exponents of all runs, of all chords, and the latter plus one, each correctly rounded.
-    rtol, atol, goal, probe_goal, safety, sigmas, probe
+    rtol, atol, goal, probe_goal, shared, single, sigmas, probe
         The request and the constants of ``disk.evaluate``.
     most_points : float
         Evaluations of one pass that a point may take here.
@@ -302,7 +307,9 @@ def integrate_points(
                     size += abs(weights[c, w])
                 out_sizes[point, c] = size
             value = _value(variables, counts, weights, marginal)
-            truncation = safety * _truncation(variables, counts, nulls, marginal, ratios, orders, sums, errors, decay)
+            truncation = _truncation(
+                variables, counts, nulls, marginal, ratios, orders, shared, single, sums, errors, decay
+            )
             absolute = 0.0
             square = 0.0
             for s in range(sector_count):
@@ -401,5 +408,5 @@ def integrate_points(
                 break  # more nodes do not help against round-off
             if likely > 0.9 * target:
                 break
-            if not _grow(variables, counts, errors, decay, 0.5 * max(target, likely) / safety, most):
+            if not _grow(variables, counts, errors, decay, shared, single, 0.6 * max(target, likely), most):
                 break

@@ -159,7 +159,6 @@ def integrate_chunks(
             flat_i[k] = 1.0
             flat_j[k] = 1.0
             flat_w[k] = 0.0
-            grid[k] = 0.0
         for k in range(wide):
             plane[k] = 0.0
         b1 = run_bounds[s, 1]
@@ -239,6 +238,8 @@ def integrate_chunks(
                     row = table_i[p]
                     for q in range(nj):
                         grid[p * nj + q] = row + table_j[q]
+                for k in range(nij, wide):
+                    grid[k] = 0.0
                 for r in range(b3, b4):
                     a = exponents[run_index[s, r]]
                     if a == 0.0:
