@@ -48,3 +48,12 @@ def yardstick() -> tuple[float, float]:
     log = best_of(lambda: np.log(x, out=out)) / len(x)
     exp = best_of(lambda: np.exp(x, out=out)) / len(x)
     return log, exp
+
+
+def peak_memory() -> int:
+    """Largest resident size of this process so far, in bytes (0 where the system does not tell)."""
+    try:
+        import resource
+    except ImportError:
+        return 0
+    return resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * 1024

@@ -35,6 +35,16 @@ class ChordData:
         """True when every exponent is real."""
         return not np.iscomplexobj(self.run_exponents)
 
+    @property
+    def is_symmetric(self) -> bool:
+        """True when reversing the order of the punctures changes nothing."""
+        m = self.n - 2
+        place = {run: k for k, run in enumerate(runs_of(m))}
+        image = [place[m - 1 - b, m - 1 - a] for a, b in runs_of(m)]
+        return bool((self.run_exponents == self.run_exponents[image]).all()) and all(
+            self.chords[k].exact == self.chords[image[k]].exact for k in range(len(self.chords))
+        )
+
     def on_pole(self) -> list[tuple[Run, int]]:
         """The runs whose chord sits exactly on a pole, with the level N (Y = -N)."""
         found = []

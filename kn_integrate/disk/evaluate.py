@@ -283,10 +283,11 @@ def _settled(data: ChordData, current: _Pass, threads: int) -> tuple[_Pass, int]
     return replace(current, roundoff=min(worst, current.roundoff + rounding), settled=True), points
 
 
-def _increments(current: _Pass, goal: float) -> dict[int, int]:
+def _increments(n: int, symmetric: bool, current: _Pass, goal: float) -> dict[int, int]:
     """How many steps each chord's rule should grow so that the bound, extrapolated, is at most ``goal``.
 
-    Greedy: the next step goes to the chord that takes off most error for the points it adds.
+    Greedy: the next step goes to the chord that takes off most error for the points it adds.  A symmetric integral
+    keeps symmetric rules, for then half of its sectors suffice.
     """
     errors = current.outcome.truncation.copy()
     shares = current.layout.shares(len(errors))
@@ -302,6 +303,10 @@ def _increments(current: _Pass, goal: float) -> dict[int, int]:
         steps[c] += 1
         if steps[c] >= MAX_STEPS:
             active[c] = False
+    if symmetric:
+        runs = runs_of(n - 2)[:-1]
+        mirrored = [runs.index((n - 3 - b, n - 3 - a)) for a, b in runs]
+        steps = np.maximum(steps, steps[mirrored])
     return {c: int(k) for c, k in enumerate(steps) if k}
 
 
@@ -320,7 +325,7 @@ def _proposal(
         if stronger != choices and layout_of(data.n, stronger).points <= affordable:
             new, improved = stronger, True
     goal = 0.6 * max(target, current.roundoff)
-    for c, extra in _increments(current, goal / _caution(data)).items():
+    for c, extra in _increments(data.n, data.is_symmetric, current, goal / _caution(data)).items():
         if new[c].family == choices[c].family and choices[c].total + extra <= MAX_NODES:
             new[c] = choices[c].more(extra)
             improved = True

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from .chords import ChordData
 from .rules.base import Rule
-from .sectors import SectorTable, sector_table
+from .sectors import SectorTable, mirror, sector_table
 
 CHUNK = 2048  # outer points per chunk: fixed, so that the order of summation never depends on the thread count
 EPSILON = 2.0**-52
@@ -251,6 +251,12 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
         if symmetric:
             variables, all_rules = _halved(layout, sectors)
             all_counts = np.array([rule.count for rule in all_rules], dtype=np.int64)
+        targets = layout.rows[sectors]
+        twins, twin_targets = np.zeros(len(sectors), dtype=bool), targets[:0]
+        images = _images(data, layout, sectors)
+        if images is not None:
+            sectors, twins, twin_targets = images
+            targets = layout.rows[sectors]
         chunks = _chunks(table, sectors, variables, all_counts)
         points += int(all_counts[variables[sectors]].prod(axis=1).sum())
         dtype = complex if is_complex else float
@@ -271,16 +277,17 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
 
         _spread(len(chunks), threads, lambda lo, hi, k=kernel, a=arguments, o=outputs: k(lo, hi, *a, *o))
         least = min(least, float(out_least.min()))
-        absolute += float(out_abs.sum())
-        square += float(out_square.sum())
         starts = np.flatnonzero(np.diff(chunks[:, 0], prepend=-1))  # chunks of a sector stand together
+        copies = np.where(twins, 2.0, 1.0)  # the errors of twins are the same, so their squares count four times
+        absolute += float((np.add.reduceat(out_abs, starts) * copies).sum())
+        square += float((np.add.reduceat(out_square, starts) * copies**2).sum())
         marginal = np.add.reduceat(out_marginal, starts, axis=0)
         rows = variables[sectors]
         terms = weights[rows] * marginal
         noise_table = np.zeros((len(all_rules), width))
         for row, rule in enumerate(all_rules):
             noise_table[row, : rule.count] = rule.noise
-        np.add.at(noise_sums, layout.rows[sectors], noise_table[rows] * np.abs(marginal))
+        noise = noise_table[rows] * np.abs(marginal)
         null_table = np.zeros((len(all_rules), null_rows, width), dtype=dtype)
         for row, rule in enumerate(all_rules):
             if is_complex or rule.is_real:
@@ -288,10 +295,12 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
         nulls = np.einsum("svzw,svw->svz", null_table[rows], marginal)
         if symmetric:
             terms, nulls = terms.real, nulls.real
-        total += terms[:, 0].sum()
-        np.add.at(null_sums, layout.rows[sectors], np.abs(nulls))
+        total += (terms[:, 0].sum(axis=1) * copies).sum()
         sizes = np.einsum("svzw,svw->svz", np.abs(null_table)[rows], np.abs(marginal))
-        np.add.at(null_sizes, layout.rows[sectors], sizes)
+        for which, places in ((slice(None), targets), (twins, twin_targets)):
+            np.add.at(noise_sums, places, noise[which])
+            np.add.at(null_sums, places, np.abs(nulls[which]))
+            np.add.at(null_sizes, places, sizes[which])
 
     truncation = np.zeros(table.chord_count)
     decay = np.zeros(table.chord_count)
@@ -312,6 +321,26 @@ def _run(data: ChordData, layout: Layout, threads: int) -> Outcome:
         least=least,
         points=points,
     )
+
+
+def _images(
+    data: ChordData, layout: Layout, sectors: NDArray[np.int64]
+) -> tuple[NDArray[np.int64], NDArray[np.bool_], NDArray[np.int32]] | None:
+    """One sector of each pair that reversing the order exchanges, when exponents and rules do not change by it.
+
+    Returns the sectors to do, which of them stand for two, and the rows of rules that belong to the others.
+    """
+    if not data.is_symmetric:
+        return None
+    partner, place = mirror(data.n)
+    first: dict[int, int] = {}
+    same = np.array([first.setdefault(id(rule), k) for k, rule in enumerate(layout.rules)])
+    mirrored = np.take_along_axis(layout.rows[partner], place, axis=1)[sectors]
+    if set(partner[sectors].tolist()) != set(sectors.tolist()) or (same[mirrored] != same[layout.rows[sectors]]).any():
+        return None
+    keep = sectors <= partner[sectors]
+    twins = (sectors < partner[sectors])[keep]
+    return sectors[keep], twins, mirrored[keep][twins]
 
 
 def _halved(layout: Layout, sectors: NDArray[np.int64]) -> tuple[NDArray[np.int32], list[Rule]]:

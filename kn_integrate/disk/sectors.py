@@ -327,3 +327,27 @@ def sector_table(n: int) -> SectorTable:
         sibling=packed("sibling"),
         **{name: packed(name) for name in names},
     )
+
+
+@cache
+def mirror(n: int) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Reversing the order of the gaps maps sectors to sectors: the image of each, and of each of its variables.
+
+    Returns
+    -------
+    partner : (S,) array
+    place : (S, n-3) array
+        Variable v of sector s becomes variable ``place[s, v]`` of sector ``partner[s]``.
+
+    >>> mirror(5)[0].tolist()
+    [4, 3, 2, 1, 0]
+    """
+    table = sector_table(n)
+    m = table.m
+    chord = {run: k for k, run in enumerate(table.runs)}
+    image = np.array([chord[m - 1 - b, m - 1 - a] for a, b in table.runs])
+    known = {frozenset(row): s for s, row in enumerate(table.variables.tolist())}
+    mirrored = image[table.variables]
+    partner = np.array([known[frozenset(row)] for row in mirrored.tolist()])
+    place = (mirrored[:, :, None] == table.variables[partner][:, None, :]).argmax(axis=2)
+    return partner, place
