@@ -6,12 +6,13 @@ comes from comparing two working precisions instead.
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable
 from typing import Any
 
+import numpy as np
+
 from .pattern import HalfPattern, StepPattern, step_pattern
-from .series import terms_needed
+from .series import growth_of, series_length
 
 
 def f_vector(n: int, inside: Callable[[int], Any], zero: Any, one: Any, epsilon: float) -> list[Any]:
@@ -78,50 +79,67 @@ def _step(legs: int, inside: Callable[[int], Any], start: list[Any], zero: Any, 
     c = [zero] * rows
     for row, value in zip(pattern.full.tolist(), start, strict=True):
         c[row] = value
-    growth = max([0.0, *(_real(v) for v in a_diagonal)]) + max([0.0, *(-_real(v) for v in b_diagonal)])
-    largest = max(abs(complex(v)) for v in (*a_diagonal, *b_diagonal, rho))
-    count = max(_count(growth, epsilon), math.ceil(largest) + math.ceil(3.33 * epsilon))
-    half = one / 2
+    everything = sum(1 << i for i in range(1, legs + 1))
+    around = (1 << 1) | (1 << top)
+    infinity = [inside(everything) - inside(around | mask << 2) for mask in range(1 << (legs - 3))]
+    exponents = [np.array([complex(v.mid()) for v in part]) for part in (a_diagonal, b_diagonal, infinity)]
+    growth = growth_of(complex(rho.mid()), *exponents)
+    largest = max(abs(complex(rho.mid())), *(float(abs(part).max()) for part in exponents))
+    last = max(max(_real(v - rho) for v in a_diagonal), max(-_real(v) for v in b_diagonal))
+    count = series_length(growth, largest, last, epsilon)
+    meeting = 3 - 2 * (one * 2).sqrt()
     a_order, b_order = pattern.a.order.tolist(), pattern.b.order.tolist()
 
-    total, series, extra = list(c), list(c), [zero] * rows
-    power = one
+    total, alternating, series = list(c), list(c), list(c)
+    extra, lifted = [zero] * rows, [zero] * rows
+    power, double_rho = one, 2 * rho
     for k in range(1, count + 1):
-        power = power * half
+        power = (power * meeting).mid()
         shift = rho + k
-        part = power / shift
+        both = [2 * (p + q) for p, q in zip(total, alternating, strict=True)]
         work = []
         for r in range(rows):
-            value = b_diagonal[r] * total[r]
+            value = b_diagonal[r] * both[r]
             for column, entry in b_rows[r]:
-                value = value + entry * total[column]
+                value = value + entry * both[column]
             work.append(value)
-            extra[r] = (extra[r] + value * part).mid()
+            h = (value + double_rho * lifted[r]) / shift
+            lifted[r] = (h - lifted[r]).mid()
+            extra[r] = (extra[r] + h * power).mid()
+        twice = [2 * q for q in alternating]
         for r in a_order:
-            value = -work[r]
+            value = (rho - a_diagonal[r]) * twice[r] - work[r]
             for column, entry in a_rows[r]:
-                value = value + entry * c[column]
+                value = value + entry * both[column]
             c[r] = _quotient(value, shift - a_diagonal[r])
+            both[r] = c[r] - twice[r]  # what A multiplies: entries of rows below come first
         for r in range(rows):
             total[r] = (total[r] + c[r]).mid()
+            alternating[r] = (c[r] - alternating[r]).mid()
             series[r] = (series[r] + c[r] * power).mid()
-    factor = (rho * half.log()).exp()
+    factor = (rho * (one / 2).log()).exp()
     f = [(factor * value).mid() for value in series]
-    result, u = [zero] * rows, [zero] * rows
-    power = half**count
+    first, second, result, u, image = ([zero] * rows for _ in range(5))
+    powers = [one]
+    for _ in range(count):
+        powers.append((powers[-1] * meeting).mid())
     for k in range(count, 0, -1):
+        power = powers[k]
         for r in b_order:
-            value = power * f[r] + result[r]
+            off = zero
             for column, entry in b_rows[r]:
-                value = value - entry * u[column]
-            u[r] = _quotient(value, b_diagonal[r] + k)
+                off = off + entry * u[column]
+            u[r] = _quotient(power * f[r] + first[r] + second[r] - off, b_diagonal[r] + k)
+            image[r] = 2 * (off + b_diagonal[r] * u[r])
         for r in range(rows):
-            value = result[r] + a_diagonal[r] * u[r]
+            value = a_diagonal[r] * u[r]
             for column, entry in a_rows[r]:
                 value = value + entry * u[column]
-            result[r] = value.mid()
-        power = power * 2
-    y = [(factor * (series[r] + extra[r]) + result[r]).mid() for r in range(rows)]
+            value = 2 * value
+            first[r] = (first[r] + value).mid()
+            second[r] = (value + image[r] - second[r]).mid()
+            result[r] = (result[r] + image[r] if k % 2 == 0 else result[r] - image[r]).mid()
+    y = [(factor * (series[r] + extra[r]) + first[r] + second[r] + result[r]).mid() for r in range(rows)]
     signs = pattern.target_sign.tolist()
     return [y[t] if sign > 0 else -y[t] for t, sign in zip(pattern.target.tolist(), signs, strict=True)]
 
@@ -136,11 +154,3 @@ def _real(value: Any) -> float:
     from flint import acb
 
     return float((value.real if isinstance(value, acb) else value).mid())
-
-
-def _count(growth: float, epsilon: float) -> int:
-    return (
-        terms_needed(0.5, growth, 10.0 ** -min(epsilon, 300.0))
-        if epsilon <= 300
-        else int(terms_needed(0.5, growth, 1e-300) + (epsilon - 300) * 3.4)
-    )

@@ -15,20 +15,73 @@ from .point import Point, split, subset_sums
 
 EPSILON = 2.0**-52
 MAX_TERMS = 20_000
-LONGEST = 1000  # beyond this 2^-k leaves the range of doubles: such exponents are left to more digits
-HALF = 0.5  # where the two series meet
+LONGEST = 380  # beyond this y^k leaves the range of doubles: such exponents are left to more digits
+MEETING = 3.0 - 2.0 * math.sqrt(2.0)  # y where the two series meet: z = 4y/(1+y)^2 = 1/2
+# In doubles they meet next to it, at a pair y, v with 4y/(1+y)^2 + 4v/(1+v)^2 = 1 to 1e-21 (found by search; a test
+# computes it again): the solution at a rounded place would be off by rho units of round-off.  LOG_TWICE = log(2 z).
+LEFT, RIGHT = float.fromhex("0x1.5f641f9de7a1cp-3"), float.fromhex("0x1.5f5f1366a0c68p-3")
+LOG_TWICE = 1.9839342500082909e-05
 
 
-def terms_needed(decay: float, growth: float, epsilon: float) -> int:
-    """The first K beyond the maximum of ``decay^K K^growth`` where it is below ``epsilon``."""
-    slope = -math.log(decay)
-    k = max(4.0, growth / slope + 1.0)
-    goal = -math.log(epsilon)
-    while slope * k - growth * math.log(k) < goal:
-        k += max(1.0, 0.3 * (goal - slope * k + growth * math.log(k)) / slope)
+def terms_needed(decay: float, growth: float, epsilon: float, start: float = 0.0) -> int:
+    """The first K beyond the maximum of ``decay^k binomial(growth + k, k)`` where that is below epsilon.
+
+    These are the terms of ``(1 - decay)^(-growth - 1)``; with ``start`` those from there on, relative to the one there.
+    """
+    slope, goal = -math.log(decay), -math.log(epsilon)
+
+    def size(k: float) -> float:
+        return math.lgamma(growth + k + 1.0) - math.lgamma(k + 1.0) - slope * k
+
+    # terms grow as long as decay (growth + k)/k > 1
+    k = max(start, growth * decay / (1.0 - decay), 4.0)
+    first = size(start)
+    while first - size(k) < goal:
+        k += max(1.0, 0.3 * (goal - first + size(k)) / slope)
         if k > MAX_TERMS:
             return MAX_TERMS
     return math.ceil(k) + 2
+
+
+def growth_of(rho: complex, at_zero: NDArray[Any], at_one: NDArray[Any], at_infinity: NDArray[Any]) -> float:
+    """The largest power of k, in the variable z, with which coefficients of either half can grow.
+
+    The solution behaves like ``(1-z)^mu`` at 1 and ``z^lambda_infinity`` at infinity, with ``z^rho`` taken out; the
+    matrix of the other half like the inverse, seen from 1.  Eigenvalues at infinity: sums over the pairs that a set of
+    letters together with z has among themselves and with all the others.
+    """
+    left = max(-float(at_one.real.min()), float(at_infinity.real.max()) - rho.real)
+    right = max(float(at_zero.real.max()), -float(at_infinity.real.min()))
+    return max(0.0, left, right) + 0.5
+
+
+def series_length(growth: float, largest: float, last: float, digits: float) -> int:
+    """Terms that leave ``10^-digits``.
+
+    At y = 1 and y = -1 exponents are twice those at z = 1 and infinity, so coefficients grow like ``k^(2 growth)``; a
+    factor ``(1 - y)^(2 mu)`` with a large mu has binomial coefficients that fall only beyond a multiple of ``|mu|``;
+    and a small denominator starts a new solution at its k, whose terms have all the way to go from there.
+
+    Parameters
+    ----------
+    growth
+        Largest exponents that make coefficients grow, in the variable z.
+    largest
+        Modulus of the largest exponent.
+    last
+        The k beyond which no denominator is small.
+    digits
+        At most 300 decimal digits are asked of powers in doubles; beyond, terms fall at their asymptotic rate.
+    """
+    short = min(digits, 300.0)
+    # one decimal digit more for what else is in the coefficients
+    epsilon = 10.0 ** -(short + 1.0)
+    k = max(
+        terms_needed(MEETING, 2.0 * growth, epsilon),
+        terms_needed(MEETING, 2.0 * growth, epsilon, max(0.0, last)),
+        1.1 * largest + 4 + short / 0.76,
+    )
+    return math.ceil(k + (digits - short) / -math.log10(MEETING))
 
 
 LANES = 4
@@ -106,25 +159,30 @@ def _step(legs: int, point: Point, s: NDArray[Any], start: NDArray[Any], noise: 
     rows = len(pattern.splits)
     c = np.zeros((rows, LANES), dtype=s.dtype)
     c[pattern.full] = start
-    growth = max(0.0, float(a_diagonal.real.max())) + max(0.0, -float(b_diagonal.real.min()))
-    # a factor like (1 - x)^mu with a large mu has binomial coefficients that fall only beyond k = |mu|
-    largest = max(float(np.abs(a_diagonal).max()), float(np.abs(b_diagonal).max()), abs(rho_value))
-    count = max(terms_needed(HALF, growth, 1e-18), math.ceil(largest) + 62)
+    full = point.inside(sum(1 << i for i in range(1, legs + 1)))
+    infinity = np.array([(full - value).value() for value in subset_sums(point, 1, one, m).values()])
+    growth = growth_of(rho_value, a_diagonal, b_diagonal, infinity)
+    largest = max(float(np.abs(part).max()) for part in (a_diagonal, b_diagonal, infinity, np.array(rho_value)))
+    last = max(-float((a_whole + a_rest).real.min()), -float(b_diagonal.real.min()))
+    count = series_length(growth, largest, last, 18.0)
     if count > LONGEST:
         return np.full((len(pattern.target), LANES), np.nan, dtype=s.dtype)
-    total, work, series, extra, u, tail = (np.zeros((rows, LANES), dtype=s.dtype) for _ in range(6))
+    # twelve vectors of (rows, lanes)
+    total, alternating, both, lifted, work, series, extra, u, image, first, second, tail = np.zeros(
+        (12, rows, LANES), dtype=s.dtype
+    )
     seeds = generator.integers(1, 2**40, 2)
     left_series(
-        rho_whole, s.dtype.type(rho_rest), HALF, count, noise, seeds[0], c, total, work, series, extra,
-        a.start, a.column, a_value, a_whole, a_rest, a.order, b.start, b.column, b_value, b_diagonal,
+        rho_whole, s.dtype.type(rho_rest), LEFT, count, noise, seeds[0], c, total, alternating, both, lifted, work,
+        series, extra, a.start, a.column, a_value, a_whole, a_rest, a.order, b.start, b.column, b_value, b_diagonal,
     )  # fmt: skip
     shake = np.zeros((rows, LANES))
     shake[:, 1:] = noise * generator.uniform(-1.0, 1.0, (rows, LANES - 1))
-    # the factor x^rho carries the rounding of rho, the sum of the two halves that of its terms
-    factor = HALF**rho_value * (1.0 + shake[0] * (1.0 + abs(rho_value)))
+    # the factor z^rho carries the rounding of rho, the sum of the two halves that of its terms
+    factor = 0.5**rho_value * np.exp(LOG_TWICE * rho_value) * (1.0 + shake[0] * (1.0 + abs(rho_value)))
     right_series(
-        1.0 - HALF, count, noise, seeds[1], factor * series, u, tail,
-        a.start, a.column, a_value, a_diagonal, b.start, b.column, b_value, b_whole, b_rest, b.order,
+        RIGHT, count, noise, seeds[1], factor * series, u, image, first, second, tail, a.start, a.column, a_value,
+        a_diagonal, b.start, b.column, b_value, b_diagonal, b_whole, b_rest, b.order,
     )  # fmt: skip
     size = abs(factor) * (abs(series) + abs(extra)) + abs(tail)
     y = factor * (series + extra) + tail + shake * size

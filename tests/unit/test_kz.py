@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from fractions import Fraction
 from itertools import permutations
 
@@ -15,7 +16,9 @@ from kn_integrate.exact import ONE, Exact
 from kn_integrate.integrals import DiskTerm
 from kn_integrate.kz.currents import amputated, amputated_lanes, separable
 from kn_integrate.kz.integral import _is_resonant, integrate_terms, massless_point
-from kn_integrate.kz.series import terms_needed
+from kn_integrate.kz.pattern import step_pattern
+from kn_integrate.kz.point import Point, subset_sums
+from kn_integrate.kz.series import LEFT, LOG_TWICE, MEETING, RIGHT, _values, terms_needed
 from kn_integrate.kz.vector import combination
 
 
@@ -40,9 +43,40 @@ def test_the_vectorised_current_is_the_plain_one():
 
 def test_terms_are_counted_beyond_the_maximum():
     for growth in (0.0, 5.0, 40.0):
-        k = terms_needed(0.5, growth, 1e-18)
-        assert 0.5**k * float(k) ** growth < 1e-17
-        assert k > growth
+        for decay in (0.5, MEETING):
+            k = terms_needed(decay, growth, 1e-18)
+            assert decay**k * float(mpmath.binomial(growth + k, k)) < 1e-17
+            assert k > growth * decay / (1 - decay)
+            assert terms_needed(decay, growth, 1e-18, start=30.0) > 30 + 18 * math.log(10) / -math.log(decay)
+
+
+def test_the_two_halves_meet_at_one_place():
+    with mpmath.workdps(40):
+        z, w = (4 * mpmath.mpf(y) / (1 + mpmath.mpf(y)) ** 2 for y in (LEFT, RIGHT))
+        assert abs(z + w - 1) < 1e-20
+        assert abs(mpmath.log(2 * z) - LOG_TWICE) < 1e-20
+
+
+@pytest.mark.parametrize("n", [5, 6, 7])
+def test_exponents_at_infinity(n):
+    """The eigenvalues of A + B are the sums that `growth_of` takes for the behaviour at infinity."""
+    point = Point(n, kn.Mandelstams.random(n, 3).pairs)
+    legs, table = n - 1, point.table()
+    m, one = legs - 3, legs
+    pattern = step_pattern(m)
+    matrix = np.zeros((len(pattern.splits),) * 2)
+    sides = ((pattern.a, 1, subset_sums(point, 1, legs - 1, m)), (pattern.b, one, subset_sums(point, one, legs - 1, m)))
+    for half, root, sums in sides:
+        values = _values(half, table, root, np.arange(2, legs - 1))
+        for row in range(len(matrix)):
+            matrix[row, row] += float(sums[half.members[row]].value())
+            for e in range(half.start[row], half.start[row + 1]):
+                matrix[row, half.column[e]] += values[e]
+    full = point.inside(sum(1 << i for i in range(1, legs + 1)))
+    expected = {round(float((full - x).value()), 6) for x in subset_sums(point, 1, one, m).values()}
+    found = np.linalg.eigvals(matrix)
+    assert all(min(abs(x - e) for e in expected) < 1e-4 for x in found)
+    assert all(min(abs(x - e) for x in found) < 1e-4 for e in expected)
 
 
 def test_reference_values():
