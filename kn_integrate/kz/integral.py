@@ -122,8 +122,8 @@ def predict(n: int, terms: Sequence[Term], *, rtol: float, digits: int | None = 
     entries = sum(entry_count(m) for m in range(n - 3))
     if digits is None:
         spread = max((abs(p.value()) for term in terms for p in term.pairs), default=1.0)
-        series = 70 + 8 * n * spread
-        cost = 5e-4 + 6e-9 * entries * series
+        series = 30 + 0.45 * n * spread
+        cost = 2.5e-4 * (n - 3) + 1.1e-8 * entries * series
         return len(terms) * cost * (1.0 if all(p.is_real for t in terms for p in t.pairs) else 2.5)
     return len(terms) * 2.4 * 4 * 1.5e-7 * entries * 3.5 * (digits + 20)
 
