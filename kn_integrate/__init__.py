@@ -43,6 +43,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "checks.examine": ("Examination", "examine_formula"),
     "api": ("disk_integral", "residue"),
     "batch": ("DiskBatch", "disk_batch"),
+    "gradient": ("Gradient", "disk_gradient"),
     "planar_points": ("PlanarPoints",),
     "convergence": ("Convergence", "converge"),
     "expansion": ("AlphaSeries", "FEntry", "ZetaSum", "alpha_expansion", "recognise", "reconstruct", "zeta"),
@@ -81,6 +82,7 @@ if TYPE_CHECKING:
     from .estimate import Estimate
     from .expansion import AlphaSeries, FEntry, ZetaSum, alpha_expansion, recognise, reconstruct, zeta
     from .exponents import DiskExponents, SphereExponents
+    from .gradient import Gradient, disk_gradient
     from .integrals import DiskIntegral, SphereIntegral
     from .integrand import Integrand, monomial, parke_taylor, parse_integrand
     from .kinematics import Mandelstams
@@ -110,6 +112,7 @@ __all__ = [
     "Estimate",
     "Examination",
     "FEntry",
+    "Gradient",
     "InputError",
     "Integrand",
     "KNError",
@@ -141,6 +144,7 @@ __all__ = [
     "converge",
     "cross_check",
     "disk_batch",
+    "disk_gradient",
     "disk_integral",
     "energy_line",
     "error_budget",
