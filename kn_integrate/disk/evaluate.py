@@ -97,7 +97,7 @@ PROBES = 2
 PROBE_DIGITS = 4.0
 MAX_STEPS = 12  # growth of one rule from one pass to the next
 # Above this many points a plan is made from what a cheaper pass with this share of the digits shows.
-SCOUTED_POINTS, SCOUT_SHARE = 5e5, 0.55
+SCOUTED_POINTS, SCOUT_SHARE = 5e5, 0.4
 SIGMAS = 9.0
 
 
