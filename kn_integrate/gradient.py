@@ -9,6 +9,7 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from .channels import Channel, planar_channels, read_labels
+from .disk.terms import PLANS_SHOWN, Term
 from .dispatch.family import DiskFamily, disk_family
 from .dispatch.integral import integrate_family
 from .dispatch.request import Request, make_request
@@ -251,7 +252,7 @@ def disk_gradient(
         max_points=request.max_points,
         threads=request.threads,
     )
-    return _gradient(family, request, found)
+    return _gradient(family, terms, request, found)
 
 
 def _channels(family: DiskFamily) -> tuple[tuple[Channel, ...], list[int]]:
@@ -271,7 +272,7 @@ def _of_nothing(family: DiskFamily, request: Request) -> Gradient:
     return Gradient(value, channels, zeros, zeros, Status.OK, 0, request.rtol, request.atol)
 
 
-def _gradient(family: DiskFamily, request: Request, found: GradientSum) -> Gradient:
+def _gradient(family: DiskFamily, terms: Sequence[Term], request: Request, found: GradientSum) -> Gradient:
     error = found.value_truncation + found.value_roundoff
     value = Estimate(
         found.value,
@@ -282,7 +283,15 @@ def _gradient(family: DiskFamily, request: Request, found: GradientSum) -> Gradi
         request.rtol,
         request.atol,
         None,
-        {"terms": len(found.terms), "truncation": found.value_truncation, "roundoff": found.value_roundoff},
+        {
+            "terms": len(found.terms),
+            "truncation": found.value_truncation,
+            "roundoff": found.value_roundoff,
+            "plan": [
+                {"coefficient": str(term.coefficient), "chords": part.integral.plan(), "passes": part.integral.passes}
+                for term, part in zip(terms[:PLANS_SHOWN], found.terms, strict=False)
+            ],
+        },
     )
     channels, order = _channels(family)
     roundoff = found.roundoff[order]
@@ -297,7 +306,6 @@ def _gradient(family: DiskFamily, request: Request, found: GradientSum) -> Gradi
         "terms": len(found.terms),
         "truncation": found.truncation[order].tolist(),
         "roundoff": roundoff.tolist(),
-        "rules": [part.integral.plan() for part in found.terms[:20]],
     }
     return Gradient(
         value,

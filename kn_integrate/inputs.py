@@ -85,6 +85,13 @@ def choice(*allowed: str) -> Reader:
     return read_choice
 
 
+def switch(value: Any, field: str) -> bool:
+    """True or false."""
+    if not isinstance(value, bool):
+        raise InputError(field, shown(value), "true or false")
+    return value
+
+
 def labels(value: Any, field: str) -> Labels:
     """Labels in order: ``1,3,2,4`` or a TOML array of integers.
 

@@ -41,7 +41,10 @@ Key: TypeAlias = tuple[str, str]  # table, key
 
 @dataclass(frozen=True)
 class Field:
-    """One value that a job may hold: its place in the file, its flag, and how it is read."""
+    """One value that a job may hold: its place in the file, its flag, and how it is read.
+
+    Without ``metavar`` the flag takes no value and stands for true.
+    """
 
     table: str
     key: str
@@ -196,7 +199,7 @@ def job_of_file(path: str, data: Mapping[str, Any], fields: Iterable[Field]) -> 
     return Job(data["verb"], values, names)
 
 
-def job_of_flags(verb: str, given: Mapping[Field, str]) -> Job:
+def job_of_flags(verb: str, given: Mapping[Field, Any]) -> Job:
     """The job in the flags of a command line."""
     return Job(
         verb,

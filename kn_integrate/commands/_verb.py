@@ -38,9 +38,9 @@ def verb(*fields: Field, explain: Explain | None = None) -> Callable[[Callable[[
     def make(function: Callable[[Job], Outcome]) -> Verb:
         name = function.__name__
 
-        def callback(job: tuple[str, ...], format: tuple[str, ...], **flags: tuple[str, ...]) -> None:
+        def callback(job: tuple[str, ...], format: tuple[str, ...], **flags: Any) -> None:
             output = FORMAT(single("--format", format) or "table", "--format")
-            given = {field: single(field.option, flags[_parameter(field)]) for field in fields}
+            given = {field: _raw(field, flags[_parameter(field)]) for field in fields}
             asked = job_of_flags(name, {field: raw for field, raw in given.items() if raw is not None})
             path = single("JOB", job)
             if path is not None:
@@ -97,12 +97,19 @@ def format_option() -> click.Option:
 
 
 def _option(flag: str, parameter: str, metavar: str, text: str) -> click.Option:
+    if not metavar:
+        return click.Option([flag, parameter], is_flag=True, help=text)
     # Given twice, a flag would silently win over itself; collect them all and let `single` refuse.
     return click.Option([flag, parameter], metavar=metavar, help=text, multiple=True)
 
 
 def _parameter(field: Field) -> str:
     return f"{field.table}_{field.key}"
+
+
+def _raw(field: Field, given: Any) -> Any:
+    """What a flag was given, None where it was not."""
+    return (given or None) if not field.metavar else single(field.option, given)
 
 
 def single(flag: str, given: Sequence[str]) -> str | None:

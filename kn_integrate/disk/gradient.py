@@ -18,14 +18,17 @@ from numpy.typing import NDArray
 
 from ..errors import WorkLimitError
 from .chords import ChordData, chord_data
-from .evaluate import CHEAP_POINTS, DEARER, DEFAULT_MAX_POINTS, Integral, _caution, integrate
+from .evaluate import DEFAULT_MAX_POINTS, Integral, _caution, integrate
 from .plan import layout_of
 from .run import EPSILON
 from .slopes import Slopes, slopes
 from .terms import Term
 
 MARGIN = 0.3  # on the bound from value and speed, which adds up moduli; the campaign reports what it leaves
-LIKELY = 3.0  # the same for round-off
+LIKELY = 1.0  # the same for round-off
+# Further attempts may cost this many times the first pass, or this many points, each: what double precision cannot give
+# is not worth a hundredfold price.
+DEARER, CHEAP_POINTS = 8.0, 1e6
 MAX_ATTEMPTS = 4
 FINEST = 1e-15
 MAX_ROUNDS = 3

@@ -13,6 +13,7 @@ from .text import error_text, number_text
 
 if TYPE_CHECKING:
     from ..estimate import Estimate
+    from ..gradient import Gradient
 
 _POLE_ADVICE = "the value does not exist on a pole; ask for the residue, or move the point"
 _LIMIT_ADVICE = "nothing was computed; raise max_points=, relax rtol=, or use another method="
@@ -48,6 +49,20 @@ def outcome_of_estimate(estimate: Estimate) -> Outcome:
         ("evaluations", str(estimate.evaluations)),
     )
     return Outcome(rows, {**estimate.to_dict(), "sources": list(estimate.sources())}, estimate.ok)
+
+
+def outcome_of_gradient(gradient: Gradient) -> Outcome:
+    """A number and its derivatives: fine only when both are."""
+    value = outcome_of_estimate(gradient.value)
+    status = [] if gradient.ok else [("gradient", gradient.status.name), ("advice", gradient.status.advice)]
+    slopes = [
+        (f"d/dX_{'.'.join(map(str, channel))}", f"{number_text(number)} +- {error_text(error)}")
+        for channel, number, error in gradient
+    ]
+    document = gradient.to_dict()
+    del document["value"]
+    ok = value.ok and gradient.ok
+    return Outcome((*value.rows, *slopes, *status), {**value.document, "ok": ok, "gradient": document}, ok)
 
 
 def outcome_of_pole(error: PoleError) -> Outcome:

@@ -424,3 +424,63 @@ def test_sensitivity_falls_back_on_differences_and_is_unknown_on_poles():
     assert varying == pytest.approx(constant, rel=1e-2)
     pole = kn.Mandelstams.from_planar(4, {(1, 2): 0, (2, 3): "0.3"})
     assert math.isnan(kn.disk_integral(pole, "PT(1,2,3,4) + PT(2,1,3,4)").input_sensitivity)
+
+
+# --- the command line -----------------------------------------------------------------------------------------------
+
+DISK = ["disk", "--planar", "1.2=3/10,2.3=2/5", "--integrand", "PT(1,2,3,4)"]
+
+
+def command(*words):
+    from click.testing import CliRunner
+
+    from kn_integrate.cli import main
+
+    result = CliRunner().invoke(main, list(words))
+    return result.exit_code, result.stdout, result.stderr
+
+
+def test_command_prints_channels_and_derivatives():
+    code, out, _ = command(*DISK, "--gradient")
+    assert code == 0
+    rows = dict(line.split(maxsplit=1) for line in out.splitlines())
+    kin = kn.Mandelstams.from_planar(4, {(1, 2): "3/10", (2, 3): "2/5"})
+    found = kn.disk_gradient(kin, "PT(1,2,3,4)")
+    assert rows["d/dX_1.2"].split(" +- ")[0] == repr(found.derivatives[0])
+    assert rows["d/dX_2.3"].split(" +- ")[0] == repr(found.derivatives[1])
+    assert float(rows["d/dX_2.3"].split(" +- ")[1]) >= found.errors[1]
+    assert rows["value"] == repr(found.value.value)
+
+
+def test_command_writes_json_and_reads_a_job_file(tmp_path):
+    job = tmp_path / "job.toml"
+    job.write_text(
+        'version = 1\nverb = "disk"\n[kinematics]\nplanar = { "1.2" = "3/10", "2.3" = "2/5" }\n'
+        '[integrand]\nf = "PT(1,2,3,4)"\n[disk]\ngradient = true\n[accuracy]\nrtol = 1e-11\n'
+    )
+    code, out, _ = command("disk", str(job), "--format", "json")
+    data = json.loads(out)
+    assert code == 0
+    assert data["ok"] is True
+    assert data["gradient"]["rtol"] == "1e-11"
+    assert [row["channel"] for row in data["gradient"]["derivatives"]] == [[1, 2], [2, 3]]
+    assert "gradient" not in json.loads(command(*DISK, "--format", "json")[1])
+    job.write_text(job.read_text().replace("true", '"yes"'))
+    code, _, err = command("disk", str(job))
+    assert code == 2
+    assert "true or false" in err
+
+
+def test_command_fails_where_the_gradient_does():
+    code, out, _ = command(*DISK, "--gradient", "--rtol", "1e-16")
+    assert code == 1
+    assert "ROUND_OFF" in out
+    code, out, _ = command("disk", "--planar", "1.2=0,2.3=2/5", "--integrand", "PT(1,2,3,4)", "--gradient")
+    assert code == 1
+    assert "ON_POLE" in out
+    for words in (["--digits", "20"], ["--method", "kz"]):
+        code, _, err = command(*DISK, "--gradient", *words)
+        assert code == 2
+        assert words[0] in err
+        assert "--gradient" in err
+    assert command(*DISK, "--gradient", "--method", "quadrature")[0] == 0
