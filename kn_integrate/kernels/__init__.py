@@ -1,1 +1,5 @@
-"""Compiled inner loops.  Arrays and scalars in, arrays and scalars out; nothing here knows what a puncture is."""
+"""Compiled loops: arrays and scalars in, arrays out; they know nothing of physics objects."""
+
+from .cache import prepare as _prepare
+
+_prepare()
