@@ -46,6 +46,18 @@ def disk_costs(point: Any, spec: Any, ordering: Any, accuracy: dict[str, Any]) -
     return facts
 
 
+def recursion_size(n: int) -> dict[str, Any]:
+    """How large the recursion in the number of legs is."""
+    from ..kz.integral import memory
+    from ..kz.pattern import entry_count
+
+    return {
+        "basis integrals": math.factorial(n - 3),
+        "entries of the matrices": sum(entry_count(m) for m in range(n - 3)),
+        "memory": f"{BASE_MEMORY + memory(n) / 1e6:.0f} MB",
+    }
+
+
 def sphere_costs(n: int, accuracy: dict[str, Any]) -> dict[str, Any]:
     """The same for one sphere integral with one term."""
     from ..sphere.direct import predict

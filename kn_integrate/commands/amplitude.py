@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import math
 from typing import Any
 
 from .. import inputs
 from ..errors import InputError
 from ..jobs import Field, Job, accuracy
 from ..report.outcome import Outcome, outcome_of_estimate
+from ._explain import recursion_size
 from ._verb import verb
 
 _VECTORS = {
@@ -66,7 +68,22 @@ COUPLING = Field("amplitude", "coupling", inputs.number, "G", "The string coupli
 ACCURACY = tuple(field for field in accuracy("auto") if field.key not in ("method", "max_points", "threads"))
 
 
-@verb(STATES, THEORY, ORDERING, ALPHA_PRIME, COUPLING, *ACCURACY)
+def _explain(job: Job) -> dict[str, Any]:
+    """How many integrals an amplitude takes."""
+    given = job.get(STATES)
+    if given is None:
+        return {}
+    n, is_open = len(given), given[0]["kind"] in ("tachyon", "gauge_boson")
+    facts: dict[str, Any] = {"legs": n, "theory": job.get(THEORY) or "bosonic"}
+    if n < 4:
+        return {**facts, "integrals": "none: fixed by symmetry"}
+    if is_open:
+        facts["orderings"] = 1 if job.get(ORDERING) is not None else math.factorial(n - 1)
+    facts["integrals"] = "by parts to the basis of each ordering" if is_open else "bilinear of disk integrals"
+    return {**facts, **recursion_size(n)}
+
+
+@verb(STATES, THEORY, ORDERING, ALPHA_PRIME, COUPLING, *ACCURACY, explain=_explain)
 def amplitude(job: Job) -> Outcome:
     """A tree amplitude of open or closed string states, from momenta and polarisations.
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import sys
 from pathlib import Path
+from typing import Any
 
 import click
 
@@ -11,6 +12,7 @@ from .. import inputs
 from ..errors import InputError
 from ..jobs import EXPONENTS, INTEGRAND, KINEMATICS, ORDERING, Field, Job, integrand_of, point_of
 from ..report.outcome import Outcome
+from ._explain import disk_costs, sphere_costs
 from ._verb import verb
 
 RIGHT = Field("integrand", "g", inputs.text, "TEXT", "The right integrand: the sphere integral J(f|g).", flag="--right")
@@ -20,7 +22,20 @@ RTOL = Field("accuracy", "rtol", inputs.real, "X", "What each engine is asked fo
 THREADS = Field("accuracy", "threads", inputs.count, "N", "Number of threads [1].")
 
 
-@verb(*KINEMATICS, EXPONENTS, INTEGRAND, RIGHT, ORDERING, BUDGET, HTML, RTOL, THREADS)
+def _explain(job: Job) -> dict[str, Any]:
+    """The time a check may take, and what one evaluation of the integral costs."""
+    point, spec = point_of(job), integrand_of(job)
+    facts: dict[str, Any] = {"n": point.n, "seconds at most, about": job.get(BUDGET) or 10.0}
+    accuracy = {"rtol": job.get(RTOL) or 1e-12}
+    if job.get(RIGHT) is not None:
+        facts["routes"] = "direct, klt from either engine, frames, closed forms, relations"
+        return {**facts, **sphere_costs(point.n, accuracy)}
+    facts["routes"] = "quadrature and its rules, series, closed forms, relations"
+    costs = disk_costs(point, spec, job.get(ORDERING), accuracy)
+    return {**facts, **{name: value for name, value in costs.items() if not name.startswith("plan")}}
+
+
+@verb(*KINEMATICS, EXPONENTS, INTEGRAND, RIGHT, ORDERING, BUDGET, HTML, RTOL, THREADS, explain=_explain)
 def check(job: Job) -> Outcome:
     """Every independent reason to believe a value; agreement is evidence, not proof.
 

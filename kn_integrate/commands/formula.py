@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from typing import Any
 
 from .. import inputs
 from ..errors import InputError
+from ..exact import ONE
 from ..jobs import INTEGRAND, ORDERING, Field, Job, N, integrand_of
 from ..report.outcome import Outcome
 from ._verb import verb
@@ -41,7 +43,27 @@ DIGITS = Field("formula", "digits", inputs.count, "D", "Digits to which both mus
 RIGHT = Field("integrand", "g", inputs.text, "TEXT", "The right integrand: makes it a sphere integral J(f|g).")
 
 
-@verb(FORMULA, WHERE, PARAMETERS, N, INTEGRAND, ORDERING, RIGHT, TRIALS, SEED, DIGITS)
+def _explain(job: Job) -> dict[str, Any]:
+    """How many integrals an examination takes, and what they cost."""
+    left = integrand_of(job)
+    assert left is not None
+    n, trials, digits = job.get(N) or left.n, job.get(TRIALS) or 40, job.get(DIGITS) or 20
+    facts: dict[str, Any] = {"n": n, "points": trials, "digits": digits}
+    orderings = math.factorial(n - 3) if job.get(RIGHT) is not None else 1
+    if orderings > 1:
+        facts["each point"] = f"{orderings} x {orderings} disk integrals and the momentum kernel"
+    from ..integrals import DiskTerm
+    from ..kinematics import Mandelstams
+    from ..kz.integral import MAX_PRECISE_LEGS, predict
+
+    if n <= MAX_PRECISE_LEGS:
+        sample = DiskTerm(ONE, Mandelstams.random(n, 1).pairs)
+        one = predict(n, [sample] * len(left.terms), rtol=10.0**-digits, digits=digits)
+        facts["integral seconds"] = f"{trials * orderings**2 * one:.2g}"
+    return facts
+
+
+@verb(FORMULA, WHERE, PARAMETERS, N, INTEGRAND, ORDERING, RIGHT, TRIALS, SEED, DIGITS, explain=_explain)
 def formula(job: Job) -> Outcome:
     """Compare a formula with an integral, and say how it is wrong if it is.
 

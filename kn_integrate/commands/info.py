@@ -24,15 +24,10 @@ def _about() -> Outcome:
 
 
 def cache_folder() -> str:
-    """Where compiled kernels are kept: NUMBA_CACHE_DIR, else beside the kernels, else numba's own user folder."""
-    chosen = os.environ.get("NUMBA_CACHE_DIR")
-    if chosen:
-        return chosen
-    beside = Path(__file__).resolve().parent.parent / "kernels" / "__pycache__"
-    holder = beside if beside.exists() else beside.parent
-    if os.access(holder, os.W_OK):
-        return str(beside)
-    return "numba's user cache (the installation is read-only); set NUMBA_CACHE_DIR to choose a folder"
+    """Where compiled kernels are kept: NUMBA_CACHE_DIR, else the first of several folders that can be written to."""
+    from ..kernels.cache import place
+
+    return place()
 
 
 def _cpu_model() -> str:

@@ -37,14 +37,22 @@ def private_folder() -> Path:
     return Path(tempfile.mkdtemp(prefix="kn_integrate-kernels-"))
 
 
+def _homes() -> tuple[Path, Path]:
+    """The places numba would take by itself."""
+    user = Path(os.environ.get("XDG_CACHE_HOME") or os.path.join(os.path.expanduser("~"), ".cache"))
+    return Path(__file__).parent / "__pycache__", user / "numba"
+
+
+def place() -> str:
+    """Where compiled kernels are kept."""
+    prepare()
+    chosen = os.environ.get("NUMBA_CACHE_DIR")
+    return chosen or str(next(folder for folder in _homes() if writable(folder)))
+
+
 def prepare() -> None:
     """Name a folder for compiled kernels to numba if it would find none by itself."""
-    if os.environ.get("NUMBA_CACHE_DIR"):
-        return
-    if writable(Path(__file__).parent / "__pycache__"):
-        return
-    home = Path(os.environ.get("XDG_CACHE_HOME") or os.path.join(os.path.expanduser("~"), ".cache"))
-    if writable(home / "numba"):
+    if os.environ.get("NUMBA_CACHE_DIR") or any(writable(folder) for folder in _homes()):
         return
     os.environ["NUMBA_CACHE_DIR"] = str(private_folder())
     import numba

@@ -125,7 +125,7 @@ def predict(n: int, terms: Sequence[Term], *, rtol: float, digits: int | None = 
         series = 30 + 0.45 * n * spread
         cost = 2.5e-4 * (n - 3) + 1.1e-8 * entries * series
         return len(terms) * cost * (1.0 if all(p.is_real for t in terms for p in t.pairs) else 2.5)
-    return len(terms) * 2.4 * 4 * 1.5e-7 * entries * 3.5 * (digits + 20)
+    return len(terms) * (2e-3 * (n - 3) + 2.4 * 4 * 1.5e-7 * entries * 3.0 * (digits + 20))
 
 
 def memory(n: int) -> float:

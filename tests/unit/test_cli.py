@@ -9,6 +9,7 @@ import sys
 import time
 from types import ModuleType, SimpleNamespace
 
+import numba
 import pytest
 from click.testing import CliRunner
 
@@ -204,10 +205,17 @@ def test_info_names_versions_cache_and_machine(monkeypatch, tmp_path):
     assert {"kn_integrate", "numpy", "numba", "python", "cache", "cpu.model"} <= set(rows)
 
 
-def test_info_without_a_writable_installation(monkeypatch):
-    monkeypatch.delenv("NUMBA_CACHE_DIR", raising=False)
-    monkeypatch.setattr(os, "access", lambda *args: False)
-    assert "NUMBA_CACHE_DIR" in json.loads(run("info", "--format", "json").out)["cache"]
+def test_info_without_a_writable_installation(monkeypatch, tmp_path):
+    """Neither the package nor the home folder: a folder of our own below the temporary one."""
+    from kn_integrate.kernels import cache
+
+    monkeypatch.setenv("NUMBA_CACHE_DIR", "")  # empty is none; and put back afterwards
+    monkeypatch.setattr(numba.config, "CACHE_DIR", numba.config.CACHE_DIR)
+    monkeypatch.setattr(cache.tempfile, "gettempdir", lambda: str(tmp_path))
+    plain = cache.writable
+    monkeypatch.setattr(cache, "writable", lambda folder: tmp_path in folder.parents and plain(folder))
+    found = json.loads(run("info", "--format", "json").out)["cache"]
+    assert found.startswith(str(tmp_path))
 
 
 def test_info_of_a_job_shows_the_prediction(engine, tmp_path):

@@ -35,7 +35,7 @@ def test_command_prints_a_table_json_and_latex():
 
 
 def test_command_on_the_sphere_and_with_numbers():
-    code, out, _ = run(*POINT, "--integrand", "PT(1,2,3,4,5)", "--second", "PT(1,3,2,4,5)", "--weight", "3")
+    code, out, _ = run(*POINT, "--integrand", "PT(1,2,3,4,5)", "--right", "PT(1,3,2,4,5)", "--weight", "3")
     assert code == 0
     assert "-15872/77*zeta(3)" in out
     code, out, _ = run(
