@@ -111,14 +111,14 @@ def open_amplitude(
         total = sum((_three(f, order) for order in orders), ZERO)
         return judged(request, "exact", {}, lambda d: scaled(plain(total, d), weight * factor, root, d), (digits,))
     kin = kinematics_of(found, alpha)
-    details = {"monomials": len(f.terms), "orderings": len(orders) * weight, "techniques": ("by-parts",)}
+    details = {"monomials": len(f.terms), "orderings": len(orders) * weight}
     if request.method != "monomials":
         try:
             chiral = Chiral(kin, f)
             return judged(
                 request,
                 "kz",
-                {**details, "choice": "monomials reduced by parts to F functions"},
+                {**details, "choice": "monomials reduced by parts to F functions", "techniques": ("by-parts",)},
                 lambda d: scaled(summed([chiral.value(order, d) for order in orders], d), weight * factor, root, d),
             )
         except (ResonanceError, PoleError, NotAvailableError, ZeroDivisionError) as error:
@@ -194,11 +194,12 @@ def closed_amplitude(
         )
         return judged(request, "exact", {}, lambda d: with_pi(plain(product, d), d), (digits,))
     kin = kinematics_of(found, alpha)
-    details = {"monomials": f"{len(left.terms)} x {len(right.terms)}", "techniques": ("by-parts", "kleiss-kuijf")}
+    details: dict[str, Any] = {"monomials": f"{len(left.terms)} x {len(right.terms)}"}
     if request.method != "monomials":
         try:
             halves = Chiral(kin, left), Chiral(kin, right)
-            return judged(request, "klt+kz", details, lambda d: with_pi(bilinear(*halves, d), d))
+            reduced = {**details, "techniques": ("by-parts", "kleiss-kuijf")}
+            return judged(request, "klt+kz", reduced, lambda d: with_pi(bilinear(*halves, d), d))
         except (ResonanceError, PoleError, NotAvailableError, ZeroDivisionError) as error:
             if request.method == "reduction":
                 raise NotAvailableError(f"the reduction has no value at this point ({error})") from None

@@ -110,7 +110,7 @@ def open_superstring_amplitude(
     return judged(
         request,
         "kz",
-        {"choice": "F functions and Yang-Mills amplitudes"},
+        {"choice": "F functions and Yang-Mills amplitudes", "techniques": ("superstring", "berends-giele")},
         lambda d: scaled(summed([half.value(order, d) for order in orders], d), weight * factor, root, d),
     )
 
@@ -157,7 +157,10 @@ def closed_superstring_amplitude(
     return judged(
         request,
         "klt+kz",
-        {"choice": "two chiral halves, each F functions and Yang-Mills amplitudes"},
+        {
+            "choice": "two chiral halves, each F functions and Yang-Mills amplitudes",
+            "techniques": ("superstring", "berends-giele"),
+        },
         lambda d: with_pi(joined(halves[0].massless, halves[0].value, halves[1].value, d), d),
     )
 

@@ -135,7 +135,15 @@ class AlphaSeries:
 
     def sources(self) -> tuple[str, ...]:
         """The published sources of the methods that were used."""
-        return tuple(s for name in self.method.split("+") for s in _SOURCES.get(name, ()))
+        from ..report.sources import sources_of
+
+        return sources_of(self.method, self.details)
+
+    def bibtex(self) -> str:
+        """The same as BibTeX entries."""
+        from ..report.sources import bibtex_of
+
+        return bibtex_of(self.method, self.details)
 
     def __str__(self) -> str:
         lines = [("weight", "order", "coefficient", "")]
@@ -178,21 +186,3 @@ def _short(c: Coefficient) -> str:
     from ..report.text import value_with_error
 
     return value_with_error(c.value, c.error, c.digits)
-
-
-_SOURCES: Mapping[str, tuple[str, ...]] = {
-    "associator": (
-        "J. Broedel, O. Schlotterer, S. Stieberger, T. Terasoma, Phys. Rev. D 89 (2014) 066014, arXiv:1304.7304: "
-        "open-string trees from the Drinfeld associator",
-        "K. Ihara, M. Kaneko, D. Zagier, Compositio Math. 142 (2006) 307: double shuffle relations",
-        "O. Schlotterer, S. Stieberger, J. Phys. A 46 (2013) 475401, arXiv:1205.1516: the basis of zeta values",
-    ),
-    "recursion": (
-        "J. Broedel, O. Schlotterer, S. Stieberger, T. Terasoma, Phys. Rev. D 89 (2014) 066014, arXiv:1304.7304: "
-        "the differential equation",
-    ),
-    "relations": (
-        "A. K. Lenstra, H. W. Lenstra, L. Lovasz, Math. Ann. 261 (1982) 515: lattice reduction, for integer relations",
-    ),
-    "klt": ("H. Kawai, D. C. Lewellen, S.-H. H. Tye, Nucl. Phys. B 269 (1986) 1: closed-string trees",),
-}

@@ -178,6 +178,69 @@ _KLEISS_KUIJF = Reference(
     "616",
     use="relations among colour orderings",
 )
+_BY_PARTS = Reference(
+    "HeTengZhang2019",
+    ("S. He", "F. Teng", "Y. Zhang"),
+    "String amplitudes from field-theory amplitudes and vice versa",
+    "Phys. Rev. Lett.",
+    "122",
+    "2019",
+    "211603",
+    "1812.03369",
+    "reduction of integrands by integration by parts",
+)
+_BERENDS_GIELE = Reference(
+    "BerendsGiele1988",
+    ("F. A. Berends", "W. T. Giele"),
+    "Recursive calculations for processes with n gluons",
+    "Nucl. Phys. B",
+    "306",
+    "1988",
+    "759",
+    use="Yang-Mills trees",
+)
+_SUPERSTRING = Reference(
+    "MafraSchlottererStieberger2013",
+    ("C. R. Mafra", "O. Schlotterer", "S. Stieberger"),
+    "Complete N-point superstring disk amplitude I. Pure spinor computation",
+    "Nucl. Phys. B",
+    "873",
+    "2013",
+    "419",
+    "1106.2645",
+    "superstring trees from field-theory trees and F functions",
+)
+_DOUBLE_SHUFFLES = Reference(
+    "IharaKanekoZagier2006",
+    ("K. Ihara", "M. Kaneko", "D. Zagier"),
+    "Derivation and double shuffle relations for multiple zeta values",
+    "Compositio Math.",
+    "142",
+    "2006",
+    "307",
+    use="double shuffle relations",
+)
+_ZETA_BASIS = Reference(
+    "SchlottererStieberger2013",
+    ("O. Schlotterer", "S. Stieberger"),
+    "Motivic multiple zeta values and superstring amplitudes",
+    "J. Phys. A",
+    "46",
+    "2013",
+    "475401",
+    "1205.1516",
+    "the basis of zeta values",
+)
+_LATTICE = Reference(
+    "LenstraLenstraLovasz1982",
+    ("A. K. Lenstra", "H. W. Lenstra", "L. Lovasz"),
+    "Factoring polynomials with rational coefficients",
+    "Math. Ann.",
+    "261",
+    "1982",
+    "515",
+    use="lattice reduction, for integer relations",
+)
 _U_EQUATIONS = "the relations among dihedral coordinates"
 
 SOURCES: Mapping[str, tuple[Reference, ...]] = {
@@ -187,7 +250,13 @@ SOURCES: Mapping[str, tuple[Reference, ...]] = {
     "kz": (_KOBA_NIELSEN, _KZ, _ASSOCIATOR),
     "direct": (_KOBA_NIELSEN, _DOTSENKO_FATEEV),
     "klt": (_KLT, _KERNEL),
+    "associator": (_ASSOCIATOR.cited_for("trees from the Drinfeld associator"), _DOUBLE_SHUFFLES, _ZETA_BASIS),
+    "recursion": (_KZ, _ASSOCIATOR),
+    "relations": (_LATTICE,),
     # techniques
+    "by-parts": (_BY_PARTS,),
+    "berends-giele": (_BERENDS_GIELE,),
+    "superstring": (_SUPERSTRING,),
     "gauss-jacobi": (_GOLUB_WELSCH,),
     "u-equations": (_KOBA_NIELSEN.cited_for(_U_EQUATIONS), _BROWN.cited_for(_U_EQUATIONS)),
     "kleiss-kuijf": (_KLEISS_KUIJF,),
