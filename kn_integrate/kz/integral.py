@@ -157,9 +157,9 @@ def _double_sum(points: Sequence[tuple[Exact, Point]], real: bool) -> _Value:
 def _double(point: Point) -> _Value:
     """One integral with its error; a mean over a circle at an exact resonance."""
     found = _double_once(point)
-    if math.isfinite(abs(found.value)) or not _is_resonant(point):
+    if math.isfinite(abs(found.value)) or not is_resonant(point):
         return found
-    direction, room = _way_out(point)
+    direction, room = way_out(point)
     radius = RADIUS * room
     total, error, count, largest = 0.0 + 0.0j, 0.0, 0, 0.0
     half = range(CIRCLE // 2) if point.is_real else range(CIRCLE)
@@ -214,7 +214,7 @@ def _contracted(point: Point, f: Any, seed: int) -> Any:
         return weights * f[targets] * (1.0 + n * (noisy(len(numbers)) - 1.0))
 
 
-def _is_resonant(point: Point) -> bool:
+def is_resonant(point: Point) -> bool:
     """Whether some denominator ``k + rho - lambda`` or ``k + mu`` of the recursion is exactly zero."""
     for legs in range(3, point.n):
         m, z, one = legs - 3, legs - 1, legs
@@ -226,7 +226,7 @@ def _is_resonant(point: Point) -> bool:
     return False
 
 
-def _way_out(point: Point) -> tuple[tuple[Exact, ...], float]:
+def way_out(point: Point) -> tuple[tuple[Exact, ...], float]:
     """A generic massless direction for every pair, and the distance along it to the nearest physical pole."""
     n = point.n
     planar = point.planar()
@@ -332,11 +332,11 @@ def _precise(point: Point, working: float, is_complex: bool) -> tuple[Any, int]:
             known[mask] = ball(point.inside(mask), is_complex)
         return known[mask]
 
-    if not _is_resonant(point):
+    if not is_resonant(point):
         return _precise_once(point.n, inside, working, is_complex), entries
     from flint import acb, arb
 
-    direction, room = _way_out(point)
+    direction, room = way_out(point)
     radius = arb(room) * arb(10) ** (-arb(int(working + 10)) / PRECISE_CIRCLE)
     way = Point(point.n, direction)
     half = range(PRECISE_CIRCLE // 2) if point.is_real else range(PRECISE_CIRCLE)

@@ -13,7 +13,17 @@ import numpy as np
 
 from ..errors import NotAvailableError, PoleError
 from .currents import amputated
-from .integral import MARGIN, MAX_LEGS, MAX_PRECISE_LEGS, NOISE, SAFETY, UNIT
+from .integral import (
+    MARGIN,
+    MAX_LEGS,
+    MAX_PRECISE_LEGS,
+    NOISE,
+    PRECISE_CIRCLE,
+    SAFETY,
+    UNIT,
+    is_resonant,
+    way_out,
+)
 from .point import Point
 from .series import LANES, f_vector
 
@@ -34,7 +44,7 @@ def f_values(point: Point, digits: int | None = None) -> Vector:
     Raises
     ------
     NotAvailableError
-        Beyond 11 legs (9 with digits), or at an exact resonance of the recursion (move the point a little).
+        Beyond 11 legs (9 with digits).
     PoleError
     """
     return _run(point, digits, lambda f, arithmetic: list(f))
@@ -162,24 +172,43 @@ def _precise(
     is_complex = not point.is_real
     zero, one = (acb(0), acb(1)) if is_complex else (arb(0), arb(1))
 
+    resonant = is_resonant(point)
+    direction, room = way_out(point) if resonant else ((), 1.0)
+
+    def once(sums: Callable[[int], Any], working: float, nought: Any, unit: Any) -> list[Any]:
+        known: dict[int, Any] = {}
+
+        def inside(mask: int) -> Any:
+            if mask not in known:
+                known[mask] = sums(mask)
+            return known[mask]
+
+        f = precise_vector(point.n, inside, nought, unit, working)
+        channel = _Arithmetic(lambda labels: inside(sum(1 << label for label in labels)), nought, unit)
+        return contract(f, channel)
+
     def at(working: float) -> list[Any]:
         bits = int(working * 3.3220) + 20
         with flint_precision(bits):
-            known: dict[int, Any] = {}
+            if not resonant:
+                found = once(lambda mask: ball(point.inside(mask), is_complex), working, zero, one)
+                return [as_mpmath(value, bits) for value in found]
+            # all entries are regular there although the recursion is not: their mean over a small circle
+            radius = arb(room) * arb(10) ** (-arb(int(working + 10)) / PRECISE_CIRCLE)
+            way = Point(point.n, direction)
+            half = range(PRECISE_CIRCLE // 2) if point.is_real else range(PRECISE_CIRCLE)
+            total: list[Any] = []
+            for k in half:
+                angle = arb(2 * k + 1) / PRECISE_CIRCLE
+                h = radius * acb(angle.cos_pi(), angle.sin_pi())
 
-            def inside(mask: int) -> Any:
-                if mask not in known:
-                    known[mask] = ball(point.inside(mask), is_complex)
-                return known[mask]
+                def moved(mask: int, h: Any = h) -> Any:
+                    return ball(point.inside(mask), True) + h * ball(way.inside(mask), True)
 
-            try:
-                f = precise_vector(point.n, inside, zero, one, working)
-            except ZeroDivisionError:
-                raise NotAvailableError(
-                    "the recursion has a resonance at this point; single integrals by disk_integral avoid it"
-                ) from None
-            channel = _Arithmetic(lambda labels: inside(sum(1 << label for label in labels)), zero, one)
-            return [as_mpmath(value, bits) for value in contract(f, channel)]
+                values = once(moved, working, acb(0), acb(1))
+                total = [a + b for a, b in zip(total, values, strict=True)] if total else list(values)
+            means = [value / len(half) for value in total]
+            return [as_mpmath(v.real if point.is_real else v, bits) for v in means]
 
     lost = 6.0 + 1.5 * point.n
     while True:

@@ -15,7 +15,7 @@ from kn_integrate.channels import pair_order
 from kn_integrate.exact import ONE, Exact
 from kn_integrate.integrals import DiskTerm
 from kn_integrate.kz.currents import amputated, amputated_lanes, separable
-from kn_integrate.kz.integral import _is_resonant, integrate_terms, massless_point
+from kn_integrate.kz.integral import integrate_terms, is_resonant, massless_point
 from kn_integrate.kz.pattern import step_pattern
 from kn_integrate.kz.point import Point, subset_sums
 from kn_integrate.kz.series import LEFT, LOG_TWICE, MEETING, RIGHT, _values, terms_needed
@@ -141,10 +141,29 @@ def resonant_point(n=6):
     return kn.Mandelstams.from_planar(n, planar)
 
 
+def test_matrices_at_an_exact_resonance():
+    """Entries are regular where the recursion is not; single integrals and the neighbourhood say what they are."""
+    kin = resonant_point()
+    columns = [(1, 2, 3, 4, 5, 6), (1, 3, 2, 5, 4, 6)]
+    domain = (1, 2, 3, 4, 5, 6)
+    z = kn.z_matrix(kin, [domain], columns)
+    for column in columns:
+        single = kn.disk_integral(kin, kn.parke_taylor(*column), method="quadrature", rtol=1e-9)
+        difference = abs(z.value(domain, column) - single.value)
+        assert difference <= single.error + z.error(domain, column)
+    row = [(2, 3, 4)]  # another ordering of the domain has a pole there
+    way = kn.Mandelstams.random(6, 9)
+    f = kn.f_matrix(kin, rows=row, digits=20)
+    up, down = (kn.f_matrix(kin.moved(way, by), rows=row, digits=20) for by in ("1e-9", "-1e-9"))
+    for here, above, below in zip(f.values, up.values, down.values, strict=True):
+        for value, a, b in zip(here, above, below, strict=True):
+            assert float(abs(value - (a + b) / 2)) < 1e-14 * max(1.0, float(abs(a)))
+
+
 def test_exact_resonances_are_no_obstacle():
     kin = resonant_point()
     terms = kn.DiskIntegral(6, pt(6)).terms(kin)
-    assert _is_resonant(massless_point(6, terms[0].pairs))
+    assert is_resonant(massless_point(6, terms[0].pairs))
     series = integrate_terms(6, terms, rtol=1e-9)
     quadrature = kn.disk_integral(kin, pt(6), method="quadrature", rtol=1e-9)
     assert series.ok
