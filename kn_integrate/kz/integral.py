@@ -109,7 +109,7 @@ def integrate_terms(
         status = judge(total.value, total.error, rtol, atol, total.error)
         target = max(atol, rtol * abs(total.value)) if math.isfinite(abs(total.value)) else 0.0
         if total.error <= target or not escalate or n > MAX_PRECISE_LEGS:
-            details = {"choice": "double precision", "integrals": len(points)}
+            details = {"choice": "double precision", "integrals": len(points), "roundoff": total.error}
             return Estimate(total.value, total.error, status, "kz", total.terms, rtol, atol, None, details)
         return _escalated(points, real, rtol, atol, None, total)
     return _escalated(points, real, rtol, atol, digits, None)
