@@ -23,7 +23,7 @@ from typing import Any, TypeAlias
 
 from ..errors import KNError
 from ..exact import Exact
-from ..expansion.by_parts import _cuts, _joined
+from ..expansion.by_parts import cuts, joined_words
 from ..integrand import Integrand
 
 Word: TypeAlias = tuple[int, ...]
@@ -80,7 +80,7 @@ def parke_taylor_form(n: int, f: Integrand, s: Callable[[int, int], Exact]) -> d
     for place, (below_first, below_last) in enumerate(forests):
         value = _entry(row, place, is_complex)
         if value:
-            for word in _joined(below_first, n - 1, below_last):
+            for word in joined_words(below_first, n - 1, below_last):
                 found[word] = found.get(word, Exact(0)) - value
     return {word: value for word, value in found.items() if value}
 
@@ -219,7 +219,7 @@ class _Step:
         below = words.pop(self.v)
         return [
             self.next_place[tuple(word if root == p else words[root] for root in words)]
-            for word in _joined(words[p], self.v, below)
+            for word in joined_words(words[p], self.v, below)
         ]
 
     def lower_pole(self, p: int, m: int, part: dict[Powers, Row], pieces: dict[Simple, dict[Powers, Row]]) -> None:
@@ -282,7 +282,7 @@ class _Step:
                 for at, a in enumerate(mine):
                     for bt, b in enumerate(yours):
                         factor = self.s[min(a, b), max(a, b)]
-                        for sign, left, right in _cuts(mine, at, yours, bt):
+                        for sign, left, right in cuts(mine, at, yours, bt):
                             image = tuple(
                                 left if root == self.v else right if root == p else words[root] for root in self.roots
                             )

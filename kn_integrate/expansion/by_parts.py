@@ -66,7 +66,7 @@ def reduce_by_parts(n: int, f: Integrand, s: Callable[[int, int], Exact], orders
     for (forest, monomial), c in state.items():
         # two roots are left, 1 and n-1, and the monomial is a power of z_1,n-1; degrees fix it to -1
         assert monomial == (((1, n - 1), -1),), monomial
-        words = _joined(forest[0], n - 1, forest[1])
+        words = joined_words(forest[0], n - 1, forest[1])
         for k, value in enumerate(c):
             if value:
                 for word in words:
@@ -79,7 +79,7 @@ def _add(state: State, key: tuple[Forest, Monomial], c: Orders) -> None:
     state[key] = list(c) if known is None else [a + b for a, b in zip(known, c, strict=True)]
 
 
-def _joined(word: Word, label: int, below: Word) -> list[Word]:
+def joined_words(word: Word, label: int, below: Word) -> list[Word]:
     """A label with its chain hung on the root of another chain."""
     return list(shuffles(word, (label, *below)))
 
@@ -128,7 +128,8 @@ class _Reduction:
         words = dict(zip(self.roots, forest, strict=True))
         below = words.pop(self.v)
         return [
-            tuple(word if root == p else words[root] for root in words) for word in _joined(words[p], self.v, below)
+            tuple(word if root == p else words[root] for root in words)
+            for word in joined_words(words[p], self.v, below)
         ]
 
     def split(self, forest: Forest, monomial: Monomial, c: Orders) -> None:
@@ -252,7 +253,7 @@ class _Reduction:
                 for bt, b in enumerate(yours):
                     factor = self.s(a, b)
                     if factor:
-                        for sign, left, right in _cuts(mine, at, yours, bt):
+                        for sign, left, right in cuts(mine, at, yours, bt):
                             image = tuple(
                                 left if root == self.v else right if root == p else words[root] for root in self.roots
                             )
@@ -261,7 +262,7 @@ class _Reduction:
         return self.connection[key]
 
 
-def _cuts(mine: Word, at: int, yours: Word, bt: int) -> list[tuple[int, Word, Word]]:
+def cuts(mine: Word, at: int, yours: Word, bt: int) -> list[tuple[int, Word, Word]]:
     """``(z_v - z_p)/z_ab`` times two chains, a in the first and b in the second, as signed pairs of words.
 
     On the path v..a b..p, ``z_v - z_p`` is the sum of the differences of neighbours; each cancels one factor and leaves
