@@ -44,8 +44,9 @@ class Slopes:
     roundoff : (chords,) array
         Bounds on the round-off of the slopes.
     speed : (chords,) array
-        Moduli of the terms that the change of each rule makes, relative to ``absolute``: how fast anything that is
-        proportional to weights of the rule can change.
+        Moduli of the terms of the derivative relative to those of the value, in the sector where that is largest: how
+        fast anything that is proportional to weights and integrand can change.  (Not over all sectors together: one
+        next to a pole would hide what goes on in the others.)
     points : int
     finite : bool
         True when every number is finite and every logarithm on its right branch.
@@ -115,7 +116,7 @@ def _pass(data: ChordData, layout: Layout, threads: int) -> Slopes:
     change = np.zeros(chords, dtype=complex)
     logs = np.zeros(len(runs), dtype=complex)
     absolute = noise = 0.0
-    steep, rough = np.zeros(chords), np.zeros(chords)
+    steep, rough, speed = np.zeros(chords), np.zeros(chords), np.zeros(chords)
     points, least = 0, math.inf
     for is_complex in (False, True):
         sectors = chosen[complex_sector == is_complex]
@@ -175,6 +176,8 @@ def _pass(data: ChordData, layout: Layout, threads: int) -> Slopes:
         drift = (np.abs(packed.moves * packed.weights)[rows] * size).sum(axis=2)
         strength = float(np.abs(data.run_exponents).sum())
         np.add.at(steep, place, ends + strength * drift)
+        whole = np.add.reduceat(out_abs, starts)
+        np.maximum.at(speed, place, (ends + strength * drift) / np.maximum(whole, 1e-300)[:, None])
         np.add.at(rough, place, (packed.slope_noise[rows] * np.abs(marginal)).sum(axis=2))
     table_of = incidence(data.n)
     found = change + table_of.T @ logs
@@ -187,7 +190,7 @@ def _pass(data: ChordData, layout: Layout, threads: int) -> Slopes:
     result: Any = found.real if real_result else found
     total = complex(value).real if real_result else complex(value)
     finite = math.isfinite(abs(total)) and bool(np.isfinite(found).all() and np.isfinite(roundoff).all()) and least > 0
-    return Slopes(total, result, absolute, roundoff, steep / max(absolute, 1e-300) + steep_logs, points, finite)
+    return Slopes(total, result, absolute, roundoff, speed + steep_logs, points, finite)
 
 
 @dataclass(frozen=True)

@@ -1,11 +1,12 @@
 """Are the claimed errors of gradients true?  Random disk integrals with derivatives known otherwise.
 
-    python tests/calibration/gradient_campaign.py                   the full campaign, about 2,500 cases
+    python tests/calibration/gradient_campaign.py                   the full campaign, about 2,900 cases
     python tests/calibration/gradient_campaign.py --share 0.05      a twentieth of it
 
 ``digamma``: n = 4, both derivatives of the beta function.  Closed forms (named as in ``tests/published/cases.py``): the
 derivative along a random direction inside the locus, by a central difference of the closed form in many digits.
-``series``: every component, by central differences of the other engine in 34 digits.  One line for every class: how
+``series``: every component, by central differences of the other engine in 34 digits, also next to poles and for large
+exponents.  One line for every class: how
 many cases, how many ok, in how many some true error lay above the claimed one (and of those how many called themselves
 ok), the smallest and the median quotient claimed/true, the share whose claimed error is at most 1e-8 of the largest
 derivative among those that asked for that much, evaluations of the gradient over those of a value to the same
@@ -31,7 +32,7 @@ import numpy as np
 sys.path.insert(0, str(Path(__file__).parent.parent / "published"))
 
 from cases import random_case
-from disk_campaign import exponents_from_chords, random_chords
+from disk_campaign import exponents_from_chords
 
 from kn_integrate import DiskExponents, disk_gradient, disk_integral
 from kn_integrate.channels import pair_order
@@ -72,6 +73,10 @@ GROUPS = [
         ("series5", 40),
         ("series6", 20),
     )
+] + [
+    Group(name, regime, count)
+    for regime in ("near poles", "large")
+    for name, count in (("series4", 80), ("series5", 80), ("series6", 20))
 ]
 
 
@@ -179,28 +184,47 @@ def _moved(value: Any, change: Any, h: Fraction) -> Any:
     return value + change * h if change else value
 
 
-RANGES = {"convergent": (20, 3000), "mild": (-900, 2000), "deep": (-4899, 2000), "complex": (-2500, 2500)}
+RANGES = {
+    "convergent": (20, 3000),
+    "mild": (-900, 2000),
+    "deep": (-4899, 2000),
+    "complex": (-2500, 2500),
+    "near poles": (-2499, 2000),
+    "large": (-14000, 40000),
+}
+
+
+def _random_exponent(regime: str, rng: np.random.Generator) -> Exact:
+    """Y of one chord, off the poles by 1/50; next to one (down to 1e-10) now and then in the regime that says so."""
+    low, high = RANGES[regime]
+    while True:
+        re = Fraction(int(rng.integers(low, high)), 1000)
+        im = Fraction(int(rng.integers(-1999, 2000)), 1000) if regime == "complex" else Fraction(0)
+        if regime == "near poles" and re < 0 and rng.random() < 0.5:
+            away = Fraction(int(rng.integers(10, 100)), 10 ** int(rng.integers(3, 12)))
+            aside = away * int(rng.integers(-3, 4)) if rng.random() < 0.3 else Fraction(0)
+            return Exact(round(re) + (away if rng.random() < 0.5 else -away), aside)
+        if pole_distance(Exact(re, im)) >= Fraction(1, 50):
+            return Exact(re, im)
+
+
+def pole_distance(y: Exact) -> Fraction:
+    """The larger part of the distance of the nearest pole."""
+    return max(abs(y.re - min(0, round(y.re))), abs(y.im))
 
 
 def _by_series(n: int, regime: str, rng: np.random.Generator) -> tuple[tuple[Exact, ...], list[Direction], list[Any]]:
-    low, high = RANGES[regime]
-    while True:
-        chords = random_chords(n, rng, regime == "complex")
-        if regime != "deep":
-            chords = {chord: Exact(Fraction(int(rng.integers(low, high)), 1000), y.im) for chord, y in chords.items()}
-        if all(
-            abs(y.re - min(0, round(y.re))) >= Fraction(1, 50) or abs(y.im) >= Fraction(1, 50) for y in chords.values()
-        ):
-            break
+    chords = {chord: _random_exponent(regime, rng) for chord in chords_of(n)}
     directions, truths = [], []
-    for chord in chords:
+    for chord, y in chords.items():
+        step = SERIES_STEP * min(Fraction(1), pole_distance(y))
         values = []
-        for h in (SERIES_STEP, -SERIES_STEP):
-            moved = exponents_from_chords(n, {**chords, chord: chords[chord] + h})
+        for h in (step, -step):
+            moved = exponents_from_chords(n, {**chords, chord: y + h})
             kin = DiskExponents.from_pairs(n, dict(zip(pair_order(n), map(str, moved), strict=True)))
             values.append(disk_integral(kin, digits=SERIES_DIGITS, method="kz").value)
         with mpmath.workdps(SERIES_DIGITS + 5):
-            truths.append((values[0] - values[1]) / 2 * SERIES_STEP.denominator)
+            truths.append((values[0] - values[1]) / 2 * step.denominator / step.numerator)
         directions.append({chord: Exact(1)})
     return exponents_from_chords(n, chords), directions, truths
 

