@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Any
 
-from ..disk.terms import Term
+from ..disk.terms import Term, predict
 from ..errors import KNError, PoleError
 from ..estimate import Estimate, judge
 from ..exact import ZERO, Exact
@@ -221,7 +221,8 @@ def along(
 
 STEP = Fraction(1, 1024)
 GRADIENT_RTOL, GRADIENT_SHARE = 1e-3, 5e-3  # what is asked of a gradient, and how much of the sum may be error
-GRADIENT_POINTS = 1e8
+GRADIENT_POINTS = 3e9
+GRADIENT_COST, AT_ONCE = 6.0, 0.05  # passes for values that a gradient costs; seconds below which nothing is compared
 
 
 def sensitivity(point: _Point, terms: Sequence[Term], varying: bool = False) -> float:
@@ -237,6 +238,8 @@ def _by_gradient(point: _Point, terms: Sequence[Term]) -> float | None:
     """``sum_c |dZ/dX_c| |X_c|`` from a gradient, None when it is too expensive or not accurate enough."""
     from ..disk.gradient import differentiate_terms
 
+    if _series_are_cheaper(point, terms):
+        return None
     sizes = [abs(point.invariants[chord].value()) for chord in chords_of(point.n)]
     for rtol in (GRADIENT_RTOL, 1e-3 * GRADIENT_RTOL):
         try:
@@ -248,6 +251,16 @@ def _by_gradient(point: _Point, terms: Sequence[Term]) -> float | None:
         if error <= GRADIENT_SHARE * total:
             return total
     return None
+
+
+def _series_are_cheaper(point: _Point, terms: Sequence[Term]) -> bool:
+    """Whether differences of the series engine are predicted to take less time than a gradient by quadrature."""
+    seconds = GRADIENT_COST * predict(point.n, terms, GRADIENT_RTOL)[1]
+    if seconds <= AT_ONCE:
+        return False
+    from ..kz.integral import predict as predict_series
+
+    return seconds > point.n * (point.n - 3) * predict_series(point.n, terms, rtol=GRADIENT_RTOL)
 
 
 def by_differences(point: _Point) -> float:
