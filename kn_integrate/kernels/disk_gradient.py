@@ -52,6 +52,24 @@ def _exp_of(p):
     return lambda p: exp(p)
 
 
+def _over(w: Any, p: Any) -> Any:
+    """Quotient; without the case distinctions that guard complex ones against overflow: runs are of order one."""
+
+
+@overload(_over, jit_options=_MATHS)
+def _over_of(w, p):
+    if isinstance(p, types.Complex):
+
+        def complex_over(w, p):
+            m = 1.0 / (p.real * p.real + p.imag * p.imag)
+            re = w.real * p.real + w.imag * p.imag
+            im = w.imag * p.real - w.real * p.imag
+            return complex(re * m, im * m)
+
+        return complex_over
+    return lambda w, p: w / p
+
+
 @njit(**_SUMS)
 def _dot(count, a, b):
     """``sum a b``."""
@@ -77,7 +95,7 @@ def _line(count, a, wf, c0, c1, t, moved):
     s1 = wf[0] * 0.0
     sm = wf[0] * 0.0
     for p in range(count):
-        q = wf[p] / (c0 + c1 * t[p])
+        q = _over(wf[p], c0 + c1 * t[p])
         s0 += q
         s1 += q * t[p]
         sm += q * moved[p]
@@ -94,7 +112,7 @@ def _sheet(count, a, wf, c0, c1, c2, c3, x, y, moved_x, moved_y):
     si = wf[0] * 0.0
     sj = wf[0] * 0.0
     for k in range(count):
-        q = wf[k] / (c0 + c1 * x[k] + y[k] * (c2 + c3 * x[k]))
+        q = _over(wf[k], c0 + c1 * x[k] + y[k] * (c2 + c3 * x[k]))
         qx = q * x[k]
         s0 += q
         s1 += qx
@@ -391,7 +409,7 @@ def integrate_chunks(
                 if not any_moving:
                     continue
                 for r in range(b1):
-                    q0 = weight * inner * exponents[run_index[s, r]] / coef[r, 0, b]
+                    q0 = _over(weight * inner * exponents[run_index[s, r]], coef[r, 0, b])
                     for u in range(outer):
                         moved[u] += q0 * shift[u, r, 0, b]
                 for r in range(b1, b2):
