@@ -324,7 +324,7 @@ def _proposal(
         stronger = _raise_strongest(data, new, digits)
         if stronger != choices and layout_of(data.n, stronger).points <= affordable:
             new, improved = stronger, True
-    goal = 0.6 * max(target, current.roundoff)
+    goal = 0.8 * max(target, current.roundoff)
     for c, extra in _increments(data.n, data.is_symmetric, current, goal / _caution(data)).items():
         if new[c].family == choices[c].family and choices[c].total + extra <= MAX_NODES:
             new[c] = choices[c].more(extra)
