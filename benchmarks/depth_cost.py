@@ -3,18 +3,22 @@
     python benchmarks/depth_cost.py
 
 For each n random chord exponents in (0, 2) and in (-4.9, 2) (every case with one below -1), the same tolerance,
-complete calls of the quadrature engine; medians over the cases that met it, and the quotient.
+complete calls of the quadrature engine; medians over the cases that met it.  Small convergent integrals are done in one
+compiled call, deep ones never: the quotient is given against that call, and against the general way that both can take.
 """
 
 from __future__ import annotations
 
 import statistics
 import time
+from collections.abc import Iterator
+from contextlib import contextmanager
 from fractions import Fraction
 
 import numpy as np
 from _machine import machine, yardstick
 
+from kn_integrate.disk import evaluate
 from kn_integrate.disk.evaluate import integrate_pairs
 from kn_integrate.dispatch.shifts import chords_of, pair_order, pair_shift
 from kn_integrate.errors import KNError
@@ -41,6 +45,17 @@ def draw(n: int, rng: np.random.Generator, low: int) -> dict[tuple[int, int], Ex
             return found
 
 
+@contextmanager
+def general_way() -> Iterator[None]:
+    """Without the compiled way of small integrals."""
+    plain = evaluate._small
+    evaluate._small = lambda *_: None
+    try:
+        yield
+    finally:
+        evaluate._small = plain
+
+
 def measure(n: int, low: int, rtol: float, cases: int) -> tuple[float, float, int]:
     """Median points and seconds of the cases that met the tolerance, and how many did."""
     rng = np.random.default_rng([n, abs(low)])
@@ -65,14 +80,17 @@ def main() -> None:
     log, exp = yardstick()
     print(f"yardstick: numpy log {log * 1e9:.2f} ns, exp {exp * 1e9:.2f} ns per element\n")
     print(
-        f"{'n':>2s}{'rtol':>8s}{'points':>12s}{'ms':>10s}{'deep points':>13s}{'deep ms':>10s}{'met':>7s}{'x time':>8s}"
+        f"{'n':>2s}{'rtol':>8s}{'points':>12s}{'ms':>10s}{'general ms':>12s}{'deep points':>13s}{'deep ms':>10s}"
+        f"{'met':>7s}{'/ general':>11s}{'/ compiled':>12s}"
     )
     for n, rtol, cases in ((4, 1e-10, 40), (5, 1e-10, 40), (6, 1e-8, 30), (7, 1e-5, 4)):
         flat = measure(n, 20, rtol, cases)
+        with general_way():
+            general = measure(n, 20, rtol, cases)
         deep = measure(n, -4900, rtol, cases)
         print(
-            f"{n:2d}{rtol:8.0e}{flat[0]:12.0f}{flat[1] * 1e3:10.2f}{deep[0]:13.0f}{deep[1] * 1e3:10.2f}"
-            f"{deep[2]:4d}/{cases:<2d}{deep[1] / flat[1]:8.1f}",
+            f"{n:2d}{rtol:8.0e}{flat[0]:12.0f}{flat[1] * 1e3:10.2f}{general[1] * 1e3:12.2f}{deep[0]:13.0f}"
+            f"{deep[1] * 1e3:10.2f}{deep[2]:4d}/{cases:<2d}{deep[1] / general[1]:11.1f}{deep[1] / flat[1]:12.1f}",
             flush=True,
         )
 
