@@ -65,3 +65,10 @@ def test_the_job_file_is_a_job(tmp_path):
     result = run(f"kn-integrate disk {job}")
     assert result.returncode == 0, result.stderr
     assert "25.9149220739" in result.stdout
+
+
+def test_the_first_command_ends_as_printed():
+    text = TEXT
+    command = next(line.partition("&& ")[2] for line in text.splitlines() if line.startswith("pip install . && "))
+    promised = text.partition("The first command ends with\n\n```\n")[2].partition("```")[0]
+    assert promised in run(command).stdout
